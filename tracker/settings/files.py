@@ -1,0 +1,183 @@
+"""Settings from TOML and overrides, and back to TOML with each setting's meaning beside it."""
+
+from __future__ import annotations
+
+import difflib
+import math
+import tomllib
+from collections.abc import Iterator
+from pathlib import Path
+from typing import Any, get_args, get_type_hints
+
+import msgspec
+from msgspec import Meta, Struct
+
+from tracker.errors import InputError, SettingsError
+from tracker.settings.schema import Settings
+
+
+def load_settings(path: str | Path | None = None, overrides: tuple[str, ...] = ()) -> Settings:
+    """Read a TOML file (or the defaults) and apply ``section.name=value`` overrides.
+
+    Raises InputError for an unreadable file, SettingsError for an unknown name, a wrong type or
+    a value out of range; both name the setting and what is allowed.
+    """
+    values: dict[str, Any] = {}
+    source = ""
+    if path is not None:
+        source = str(path)
+        values = _read_toml(Path(path))
+    for text in overrides:
+        _apply_override(values, text)
+    return settings_from(values, source=source)
+
+
+def settings_from(values: dict[str, Any], source: str = "") -> Settings:
+    """Validate plain nested dictionaries; the string 'none' stands for an unset value."""
+    try:
+        return msgspec.convert(_unset(values), Settings)
+    except msgspec.ValidationError as error:
+        problem, _, path = str(error).partition(" - at `$.")
+        path = path.rstrip("`")
+        raise SettingsError(_remedy(problem, path), setting=path, source=source) from None
+
+
+def _unset(value: Any) -> Any:
+    if isinstance(value, dict):
+        return {key: _unset(item) for key, item in value.items()}
+    return None if value == "none" else value
+
+
+def settings_as_dict(settings: Settings) -> dict[str, Any]:
+    """Nested plain values, None included."""
+    return msgspec.to_builtins(settings)
+
+
+def settings_as_toml(settings: Settings, *, comments: bool = True) -> str:
+    """The complete settings as TOML; with comments each line says meaning, unit and source."""
+    lines: list[str] = []
+    section = ""
+    for path, value, meta in describe(settings):
+        parent, _, name = path.rpartition(".")
+        if parent != section:
+            section = parent
+            lines += ["", f"[{section}]"] if lines else [f"[{section}]"]
+        if comments:
+            lines += [f"# {line}" for line in _comment(meta)]
+        lines.append(f"{name} = {_toml_value(value)}")
+    return "\n".join(lines) + "\n"
+
+
+def describe(settings: Settings | None = None) -> Iterator[tuple[str, Any, dict[str, str]]]:
+    """Yield (path, value, {'meaning', 'unit', 'source', 'allowed'}) of every setting in order."""
+    yield from _describe(settings or Settings(), "")
+
+
+def _describe(section: Struct, prefix: str) -> Iterator[tuple[str, Any, dict[str, str]]]:
+    hints = get_type_hints(type(section), include_extras=True)
+    nested = []
+    for name in section.__struct_fields__:
+        value = getattr(section, name)
+        if isinstance(value, Struct):
+            nested.append((f"{prefix}{name}", value))
+        else:
+            yield f"{prefix}{name}", value, _facts_of(hints[name])
+    for path, value in nested:
+        yield from _describe(value, f"{path}.")
+
+
+def _facts_of(hint: Any) -> dict[str, str]:
+    facts = {"meaning": "", "unit": "", "source": ""}
+    bounds: list[str] = []
+    for meta in _metas(hint):
+        if meta.description:
+            facts |= {"meaning": meta.description, **(meta.extra or {})}
+        for sign, bound in (("≥", meta.ge), (">", meta.gt), ("≤", meta.le), ("<", meta.lt)):
+            if bound is not None:
+                bounds.append(f"{sign} {bound:g}")
+    choices = _choices(hint)
+    facts["allowed"] = " or ".join(choices) if choices else " and ".join(bounds)
+    return facts
+
+
+def _metas(hint: Any) -> list[Meta]:
+    """All msgspec annotations of a hint, those inside a union included."""
+    inner = [meta for item in get_args(hint) for meta in _metas(item)]
+    return [meta for meta in getattr(hint, "__metadata__", ()) if isinstance(meta, Meta)] + inner
+
+
+def _choices(hint: Any) -> list[str]:
+    """The values of a Literal anywhere inside `hint`."""
+    arguments = get_args(hint)
+    if arguments and all(isinstance(item, str) for item in arguments):
+        return [str(item) for item in arguments]
+    return [choice for item in arguments for choice in _choices(item)]
+
+
+def _comment(facts: dict[str, str]) -> list[str]:
+    extras = [
+        f"{label}: {facts[key]}"
+        for key, label in (("unit", "unit"), ("allowed", "allowed"), ("source", "source"))
+        if facts[key]
+    ]
+    return [facts["meaning"], *(["  " + "; ".join(extras)] if extras else [])]
+
+
+def _toml_value(value: Any) -> str:
+    if value is None:
+        return '"none"'
+    if isinstance(value, bool):
+        return "true" if value else "false"
+    if isinstance(value, float) and not math.isfinite(value):
+        return "nan" if math.isnan(value) else ("inf" if value > 0 else "-inf")
+    if isinstance(value, (int, float)):
+        return repr(value)
+    if isinstance(value, (tuple, list)):
+        return "[" + ", ".join(_toml_value(item) for item in value) + "]"
+    return msgspec.json.encode(str(value)).decode()
+
+
+def _read_toml(path: Path) -> dict[str, Any]:
+    try:
+        return tomllib.loads(path.read_text(encoding="utf-8"))
+    except OSError as error:
+        raise InputError(
+            f"the settings file cannot be read: {error.strerror}", path=path
+        ) from None
+    except UnicodeDecodeError:
+        raise InputError("the settings file is not UTF-8 text", path=path) from None
+    except tomllib.TOMLDecodeError as error:
+        raise InputError(
+            f"not valid TOML: {error}",
+            path=path,
+            remedy="'margent associate --print-settings' shows a complete file.",
+        ) from None
+
+
+def _apply_override(values: dict[str, Any], text: str) -> None:
+    path, equals, raw = text.partition("=")
+    if not equals or not path.strip():
+        raise SettingsError(f"expected section.name=value, found {text!r}", source="--set")
+    try:
+        value = tomllib.loads(f"value = {raw}")["value"]
+    except tomllib.TOMLDecodeError:
+        value = raw.strip()  # a bare word is a string
+    *parents, name = path.strip().split(".")
+    target = values
+    for parent in parents:
+        target = target.setdefault(parent, {})
+        if not isinstance(target, dict):
+            raise SettingsError(f"{parent!r} is not a section", setting=path, source="--set")
+    target[name] = value
+
+
+def _remedy(problem: str, path: str) -> str:
+    """Turn msgspec's message into one that also says what would be right."""
+    if problem.startswith("Object contains unknown field"):
+        name = problem.split("`")[1]
+        prefix = f"{path}." if path else ""
+        known = [key for key, _, _ in describe()]
+        near = difflib.get_close_matches(prefix + name, known, n=1, cutoff=0.4)
+        hint = f"; did you mean '{near[0]}'?" if near else ""
+        return f"there is no setting '{prefix}{name}'{hint}"
+    return problem[0].lower() + problem[1:]

@@ -1,0 +1,206 @@
+"""Every setting: meaning, unit, allowed range, default, and where the idea comes from.
+
+Settings are immutable and complete: a default is a value like any other, and the whole set is
+written into each run folder. Files, overrides and `--print-settings` are in `files.py`.
+"""
+
+from __future__ import annotations
+
+from typing import Annotated, Literal
+
+from msgspec import Meta, Struct
+
+Positive = Meta(gt=0.0)
+NonNegative = Meta(ge=0.0)
+Probability = Meta(gt=0.0, lt=1.0)
+PositiveFloat = Annotated[float, Positive]
+ProbabilityFloat = Annotated[float, Probability]
+
+
+def about(meaning: str, unit: str = "", source: str = "") -> Meta:
+    """What `--print-settings` says about one setting."""
+    return Meta(description=meaning, extra={"unit": unit, "source": source})
+
+
+class _Section(Struct, frozen=True, forbid_unknown_fields=True, kw_only=True):
+    """Base of all sections: immutable, no unknown names."""
+
+
+class TimeSettings(_Section):
+    """How frame numbers become seconds."""
+
+    frame_rate_hz: Annotated[
+        PositiveFloat | None,
+        about("Frame rate of logs that have frame numbers only; sequence.toml goes first", "1/s"),
+    ] = None
+    absent_frames: Annotated[
+        Literal["not-scanned", "scanned"],
+        about(
+            "A frame number missing from the log: 'not-scanned' predicts across it, 'scanned' "
+            "means that the detector looked and saw nothing, so tracks miss"
+        ),
+    ] = "not-scanned"
+
+
+class SensorSettings(_Section):
+    """What is known of the detector."""
+
+    detection_probability: Annotated[
+        float, Probability, about("P_D: chance that a present object is detected in a frame")
+    ] = 0.9
+    score_floor: Annotated[
+        float | None, about("Detections scored below this are not used at all", "score")
+    ] = None
+
+
+class MotionSettings(_Section):
+    """Constant velocity driven by continuous white-noise acceleration.
+
+    For boxes all three are in box scales (square root of width times height), so that near and
+    far objects are treated alike; for points they are in the log's own length unit.
+    """
+
+    acceleration_noise: Annotated[
+        float,
+        NonNegative,
+        about(
+            "Square root of the acceleration's power spectral density",
+            "box scales (or length units) per s^1.5",
+            "Bar-Shalom, Li and Kirubarajan 2001, ch. 6",
+        ),
+    ] = 1.0
+    size_noise: Annotated[
+        float,
+        NonNegative,
+        about("The same for width and height", "box scales per s^1.5"),
+    ] = 0.5
+    initial_speed_sigma: Annotated[
+        float,
+        Positive,
+        about("Standard deviation of a new track's velocity", "box scales (or length units) / s"),
+    ] = 1.0
+    initial_size_rate_sigma: Annotated[
+        float, Positive, about("Standard deviation of a new track's size rates", "box scales / s")
+    ] = 0.2
+
+
+class MeasurementSettings(_Section):
+    """Noise of one detection, where the log has no sigma_* columns."""
+
+    unit: Annotated[
+        Literal["auto", "box-scales", "absolute"],
+        about(
+            "Unit of the two sigmas: 'box-scales' multiplies by the square root of width times "
+            "height; 'auto' is box-scales for boxes, absolute for points"
+        ),
+    ] = "auto"
+    position_sigma: Annotated[
+        float, Positive, about("Standard deviation of the centre or point", "see unit")
+    ] = 0.08
+    size_sigma: Annotated[
+        float, Positive, about("Standard deviation of width and height", "see unit")
+    ] = 0.1
+
+
+class GateSettings(_Section):
+    """Which pairs are considered at all."""
+
+    probability: Annotated[
+        ProbabilityFloat | None,
+        about(
+            "P_G: chance that the true detection falls inside the d² gate; none switches the d² "
+            "gate off (boxes with an overlap floor only)",
+            "",
+            "chi-square quantile, NIST/SEMATECH e-Handbook 1.3.6.7.4",
+        ),
+    ] = 0.999
+    overlap_floor: Annotated[
+        float, Meta(ge=0.0, lt=1.0), about("Boxes: least IoU of a candidate; 0 switches it off")
+    ] = 0.0
+    candidate_limit: Annotated[
+        int,
+        Meta(ge=1_000),
+        about("Most candidate pairs in one frame before the run stops with an error", "pairs"),
+    ] = 50_000_000
+
+
+class OverlapSettings(_Section):
+    """IoU as evidence: cost = nats x (neutral - IoU)."""
+
+    nats: Annotated[
+        float, Positive, about("How much evidence the whole range of IoU carries", "nats")
+    ] = 10.0
+    neutral: Annotated[
+        float, Meta(ge=0.0, le=1.0), about("IoU that speaks neither for nor against the pair")
+    ] = 0.5
+
+
+class CostSettings(_Section):
+    """What a pair costs, in nats: minus the log-likelihood ratio of 'same' against 'new'."""
+
+    terms: Annotated[
+        tuple[Literal["auto", "overlap", "mahalanobis", "likelihood"], ...],
+        Meta(min_length=1),
+        about(
+            "Terms that are added: overlap (boxes), mahalanobis (half of d² minus the gate), "
+            "likelihood (half of d², log-volume of S, new_density); auto is overlap for boxes, "
+            "likelihood for points if new_density is set, else mahalanobis",
+            "",
+            "Sittler 1964; Blackman and Popoli 1999",
+        ),
+    ] = ("auto",)
+    overlap: OverlapSettings = OverlapSettings()
+    new_density: Annotated[
+        PositiveFloat | None,
+        about(
+            "Density of new objects and clutter in measurement space, needed by likelihood",
+            "per frame and unit volume of measurement space",
+        ),
+    ] = None
+
+
+class LifecycleSettings(_Section):
+    """Birth, confirmation, coasting, end."""
+
+    birth_score: Annotated[
+        float | None,
+        about("An unpaired detection scored at or above this starts a track", "score"),
+    ] = None
+    confirm_hits: Annotated[
+        int, Meta(ge=1, le=64), about("M: detections that confirm a track", "detections")
+    ] = 2
+    confirm_window: Annotated[
+        int, Meta(ge=1, le=64), about("N: frames since birth within which they count", "frames")
+    ] = 3
+    coast_seconds: Annotated[
+        float,
+        NonNegative,
+        about("A confirmed track ends once its last detection is older than this", "s"),
+    ] = 1.0
+
+
+class OutputSettings(_Section):
+    """Which rows of tracks.csv count as reported."""
+
+    report_before_confirmation: Annotated[
+        bool,
+        about("Report a confirmed track's rows from before its confirmation (written late)"),
+    ] = True
+    report_coasting_seconds: Annotated[
+        float,
+        NonNegative,
+        about("Report coasting rows up to this long after the last detection", "s"),
+    ] = 0.0
+
+
+class Settings(_Section):
+    """All settings of a run. `Settings()` is the documented default."""
+
+    time: TimeSettings = TimeSettings()
+    sensor: SensorSettings = SensorSettings()
+    motion: MotionSettings = MotionSettings()
+    measurement: MeasurementSettings = MeasurementSettings()
+    gate: GateSettings = GateSettings()
+    cost: CostSettings = CostSettings()
+    lifecycle: LifecycleSettings = LifecycleSettings()
+    output: OutputSettings = OutputSettings()
