@@ -18,6 +18,7 @@ program can act on it; `str(error)` is the sentence for a person and ends with t
 from __future__ import annotations
 
 from pathlib import Path
+from typing import Any
 
 EXIT_DONE = 0
 EXIT_LIMIT = 1
@@ -29,6 +30,17 @@ class MargentError(Exception):
     """Base of all errors raised on purpose; `exit_code` is what the command line returns."""
 
     exit_code = EXIT_INTERNAL
+
+    def __reduce__(self) -> tuple[Any, ...]:
+        """Errors cross process borders whole, whatever their constructor takes."""
+        return _rebuild, (type(self), self.args, self.__dict__)
+
+
+def _rebuild(kind: type[MargentError], args: tuple[Any, ...], data: dict[str, Any]) -> MargentError:
+    error = kind.__new__(kind, *args)
+    error.args = args
+    error.__dict__.update(data)
+    return error
 
 
 class UsageError(MargentError):

@@ -8,12 +8,12 @@ left and top; `box_corner` converts.
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from enum import StrEnum
 from pathlib import Path
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -88,6 +88,36 @@ class Frame:
     def __len__(self) -> int:
         return len(self.z)
 
+    @classmethod
+    def of_boxes(
+        cls, number: int, time: float, corners: ArrayLike, score: ArrayLike | None = None
+    ) -> Frame:
+        """A frame of boxes given as (m, 4) left, top, width, height."""
+        return cls._of(number, time, box_centre(_table(corners, 4)), score)
+
+    @classmethod
+    def of_points(
+        cls, number: int, time: float, points: ArrayLike, score: ArrayLike | None = None
+    ) -> Frame:
+        """A frame of points given as (m, 2) x, y."""
+        return cls._of(number, time, _table(points, 2), score)
+
+    @classmethod
+    def _of(cls, number: int, time: float, z: Floats, score: ArrayLike | None) -> Frame:
+        count = len(z)
+        return cls(
+            number=number,
+            time=time,
+            z=z,
+            score=np.full(count, np.nan) if score is None else np.array(score, np.float64),
+            label=np.full(count, -1, np.int32),
+            line=np.full(count, -1, np.int64),
+        )
+
+
+def _table(values: ArrayLike, columns: int) -> Floats:
+    return np.array(values, dtype=np.float64).reshape(-1, columns)
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class DetectionLog:
@@ -138,6 +168,20 @@ class DetectionLog:
             line=self.line[rows],
             sigma=None if self.sigma is None else self.sigma[rows],
             embedding=None if self.embedding is None else self.embedding[rows],
+        )
+
+    def select(self, wanted: NDArray[np.bool_]) -> DetectionLog:
+        """The log with only the wanted (n,) rows; all frames stay, some perhaps empty."""
+        kept = np.concatenate(([0], np.cumsum(wanted)))
+        return replace(
+            self,
+            offsets=kept[self.offsets],
+            z=self.z[wanted],
+            score=self.score[wanted],
+            label=self.label[wanted],
+            line=self.line[wanted],
+            sigma=None if self.sigma is None else self.sigma[wanted],
+            embedding=None if self.embedding is None else self.embedding[wanted],
         )
 
     def frames(self) -> Iterator[Frame]:

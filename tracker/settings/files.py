@@ -45,6 +45,8 @@ def settings_from(values: dict[str, Any], source: str = "") -> Settings:
 def _unset(value: Any) -> Any:
     if isinstance(value, dict):
         return {key: _unset(item) for key, item in value.items()}
+    if isinstance(value, (list, tuple)):
+        return [_unset(item) for item in value]
     return None if value == "none" else value
 
 
@@ -57,15 +59,24 @@ def settings_as_toml(settings: Settings, *, comments: bool = True) -> str:
     """The complete settings as TOML; with comments each line says meaning, unit and source."""
     lines: list[str] = []
     section = ""
-    for path, value, meta in describe(settings):
+    for path, value, facts in describe(settings):
         parent, _, name = path.rpartition(".")
         if parent != section:
             section = parent
-            lines += ["", f"[{section}]"] if lines else [f"[{section}]"]
+            lines += ["", _heading(parent)]
         if comments:
-            lines += [f"# {line}" for line in _comment(meta)]
+            lines += [f"# {line}" for line in _comment(facts)]
         lines.append(f"{name} = {_toml_value(value)}")
-    return "\n".join(lines) + "\n"
+    return "\n".join(lines[1:]) + "\n"
+
+
+def _heading(section: str) -> str:
+    """TOML heading of a section; an item of a list is a table of its own."""
+    name, bracket, rest = section.partition("[")
+    if not bracket:
+        return f"[{section}]"
+    below = rest.partition("]")[2]
+    return f"[{name}{below}]" if below else f"[[{name}]]"
 
 
 def describe(settings: Settings | None = None) -> Iterator[tuple[str, Any, dict[str, str]]]:
@@ -80,10 +91,19 @@ def _describe(section: Struct, prefix: str) -> Iterator[tuple[str, Any, dict[str
         value = getattr(section, name)
         if isinstance(value, Struct):
             nested.append((f"{prefix}{name}", value))
-        else:
+        elif isinstance(value, tuple) and value and isinstance(value[0], Struct):
+            nested += [(f"{prefix}{name}[{k}]", item) for k, item in enumerate(value)]
+        elif value is not None or not _is_section(hints[name]):
             yield f"{prefix}{name}", value, _facts_of(hints[name])
     for path, value in nested:
         yield from _describe(value, f"{path}.")
+
+
+def _is_section(hint: Any) -> bool:
+    """Whether a hint allows a section of its own (`GateSettings | None`)."""
+    if isinstance(hint, type) and issubclass(hint, Struct):
+        return True
+    return any(_is_section(item) for item in get_args(hint))
 
 
 def _facts_of(hint: Any) -> dict[str, str]:
@@ -141,9 +161,7 @@ def _read_toml(path: Path) -> dict[str, Any]:
     try:
         return tomllib.loads(path.read_text(encoding="utf-8"))
     except OSError as error:
-        raise InputError(
-            f"the settings file cannot be read: {error.strerror}", path=path
-        ) from None
+        raise InputError(f"the settings file cannot be read: {error.strerror}", path=path) from None
     except UnicodeDecodeError:
         raise InputError("the settings file is not UTF-8 text", path=path) from None
     except tomllib.TOMLDecodeError as error:

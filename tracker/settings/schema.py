@@ -159,6 +159,30 @@ class CostSettings(_Section):
     ] = None
 
 
+StateName = Literal["tentative", "confirmed", "coasting"]
+
+
+class TierSettings(_Section):
+    """One pass of association over what earlier passes left unpaired.
+
+    Confident detections first and weak ones only to keep tracks alive is hysteresis: a high
+    threshold to start, a low one to continue (Canny 1986, for edges; from memory).
+    """
+
+    name: Annotated[str, about("What the ledger calls this tier")] = "all"
+    score_from: Annotated[
+        float | None, about("Detections scored at or above this take part", "score")
+    ] = None
+    score_below: Annotated[
+        float | None, about("Detections scored below this take part", "score")
+    ] = None
+    states: Annotated[
+        tuple[StateName, ...], Meta(min_length=1), about("Tracks in these states take part")
+    ] = ("tentative", "confirmed", "coasting")
+    gate: Annotated[GateSettings | None, about("Gate of this tier; none is [gate]")] = None
+    cost: Annotated[CostSettings | None, about("Cost of this tier; none is [cost]")] = None
+
+
 class LifecycleSettings(_Section):
     """Birth, confirmation, coasting, end."""
 
@@ -202,5 +226,6 @@ class Settings(_Section):
     measurement: MeasurementSettings = MeasurementSettings()
     gate: GateSettings = GateSettings()
     cost: CostSettings = CostSettings()
+    tiers: Annotated[tuple[TierSettings, ...], Meta(min_length=1)] = (TierSettings(),)
     lifecycle: LifecycleSettings = LifecycleSettings()
     output: OutputSettings = OutputSettings()

@@ -1,0 +1,104 @@
+"""Several logs, one process or many: each worker takes whole logs, so results do not depend on it."""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Iterator
+from concurrent.futures import ProcessPoolExecutor
+from concurrent.futures.process import BrokenProcessPool
+from dataclasses import dataclass, field
+from multiprocessing import get_context
+from pathlib import Path
+from typing import Any
+
+from tracker.errors import InternalError, MargentError, UsageError
+from tracker.log import read_log
+from tracker.log.facts import name_of, read_facts
+from tracker.offline import Watch, associate_log
+from tracker.settings import Settings
+
+DEFAULT_OUT = Path("runs")
+
+
+@dataclass(slots=True)
+class Outcome:
+    """What became of one log: its run folder and facts, or the error."""
+
+    log: Path
+    folder: Path
+    facts: dict[str, Any] = field(default_factory=dict)
+    error: MargentError | None = None
+
+
+def associate_logs(
+    logs: list[Path],
+    out: Path | None,
+    settings: Settings,
+    reading: dict[str, Any],
+    workers: int = 1,
+    watch: Watch | None = None,
+) -> Iterator[Outcome]:
+    """Associate each log into a run folder; yields the outcomes in the order of `logs`.
+
+    out : the run folder of a single log, the parent of one folder a log for several; by default
+    a folder named after the log in ``runs/``.   reading : keyword arguments of `read_log`.
+    watch : wraps the frames of each log to show progress, in a single process only.
+
+    Raises UsageError where two logs would get the same folder.
+    """
+    folders = run_folders(logs, out)
+    jobs = [
+        (Outcome(log, folder), settings, reading) for log, folder in zip(logs, folders, strict=True)
+    ]
+    if workers == 1 or len(jobs) == 1:
+        yield from (_associate_one(*job, watch) for job in jobs)
+        return
+    # Spawned, not forked: a fork would copy locks of threads that the parent may have started.
+    with ProcessPoolExecutor(min(workers, len(jobs)), mp_context=get_context("spawn")) as pool:
+        pending = [pool.submit(_associate_one, *job) for job in jobs]
+        for future, job in zip(pending, jobs, strict=True):
+            try:
+                yield future.result()
+            except BrokenProcessPool:
+                job[0].error = InternalError(
+                    f"{job[0].log}: the worker process died (out of memory?); run this log alone"
+                )
+                yield job[0]
+
+
+def run_folders(logs: list[Path], out: Path | None) -> list[Path]:
+    """The run folder of each log."""
+    if len(logs) == 1 and out is not None:
+        return [out]
+    names = _distinct_names(logs)
+    return [(out or DEFAULT_OUT) / name for name in names]
+
+
+def _distinct_names(logs: list[Path]) -> list[str]:
+    """Sequence names, with the file's stem behind those that several logs share."""
+    names = [name_of(log, read_facts(log)) for log in logs]
+    shared = {name for name, count in Counter(names).items() if count > 1}
+    names = [
+        f"{name}-{log.stem}" if name in shared else name
+        for name, log in zip(names, logs, strict=True)
+    ]
+    names = [name.replace("/", "_").replace("\\", "_") for name in names]
+    for name, count in Counter(names).items():
+        if count > 1:
+            twice = [str(log) for log, other in zip(logs, names, strict=True) if other == name]
+            raise UsageError(
+                f"{' and '.join(twice)} would both be written to '{name}'; run them apart, or "
+                "give them a name each in sequence.toml"
+            )
+    return names
+
+
+def _associate_one(
+    outcome: Outcome, settings: Settings, reading: dict[str, Any], watch: Watch | None = None
+) -> Outcome:
+    try:
+        log = read_log(outcome.log, frame_rate_hz=settings.time.frame_rate_hz, **reading)
+        outcome.facts = associate_log(log, settings, outcome.folder, watch=watch)
+    except MargentError as error:
+        outcome.error = error
+    return outcome

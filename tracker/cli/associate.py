@@ -1,0 +1,140 @@
+"""`margent associate`: detection logs in, tracks out."""
+
+from __future__ import annotations
+
+import sys
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated
+
+import typer
+
+from tracker.errors import InputError, MargentError, UsageError
+
+if TYPE_CHECKING:
+    from tracker.settings import Settings
+
+
+def associate(
+    logs: Annotated[
+        list[Path] | None,
+        typer.Argument(
+            metavar="LOG...", help="Detection logs, or folders with one detections.* each."
+        ),
+    ] = None,
+    out: Annotated[
+        Path | None,
+        typer.Option(help="Folder of the run; with several logs, one folder a log inside it."),
+    ] = None,
+    settings: Annotated[
+        Path | None, typer.Option(help="Settings as TOML; what it leaves out keeps its default.")
+    ] = None,
+    set_: Annotated[
+        list[str] | None,
+        typer.Option(
+            "--set",
+            metavar="SECTION.NAME=VALUE",
+            help="Change one setting, e.g. --set lifecycle.coast_seconds=2. Repeatable.",
+        ),
+    ] = None,
+    frame_rate_hz: Annotated[
+        float | None,
+        typer.Option(help="Frame rate where neither sequence.toml nor timestamps give one."),
+    ] = None,
+    columns: Annotated[
+        list[str] | None,
+        typer.Option(
+            metavar="THEIRS=OURS", help="Read column THEIRS of the log as OURS. Repeatable."
+        ),
+    ] = None,
+    log_format: Annotated[
+        str | None,
+        typer.Option("--format", help="Force the log's format instead of recognising it."),
+    ] = None,
+    drop_identities: Annotated[
+        bool, typer.Option(help="Read a truth or track file as plain detections.")
+    ] = False,
+    strict: Annotated[
+        bool, typer.Option(help="Stop with exit code 2 if any row would be rejected.")
+    ] = False,
+    workers: Annotated[int, typer.Option(min=1, help="Processes; each takes whole logs.")] = 1,
+    print_settings: Annotated[
+        bool, typer.Option(help="Print all settings with their meaning, and stop.")
+    ] = False,
+) -> None:
+    """Associate the detections of each log into tracks.
+
+    Reads CSV, Parquet, NDJSON or the public benchmark text layout, boxes or points, and writes a
+    run folder: tracks.csv, tracks.parquet, events.csv, rejected.csv, settings.toml, run.json.
+
+    Example: margent associate sample_sequences/forecourt --out runs/forecourt
+    """
+    from tracker.settings import load_settings, settings_as_toml
+
+    overrides = list(set_ or [])
+    if frame_rate_hz is not None:
+        overrides.append(f"time.frame_rate_hz={frame_rate_hz}")
+    chosen = load_settings(settings, tuple(overrides))
+    if print_settings:
+        sys.stdout.write(settings_as_toml(chosen))
+        return
+    if not logs:
+        raise UsageError("name at least one detection log, or use --print-settings")
+    reading = {
+        "columns": column_names(columns),
+        "format": log_format,
+        "drop_identities": drop_identities,
+        "strict": strict,
+    }
+    _associate_all(logs, out, chosen, reading, workers)
+
+
+def column_names(pairs: list[str] | None) -> dict[str, str] | None:
+    """`theirs=ours` options as a mapping. Raises UsageError for anything else."""
+    names = {}
+    for pair in pairs or []:
+        theirs, equals, ours = pair.partition("=")
+        if not equals or not theirs or not ours:
+            raise UsageError(f"--columns takes THEIRS=OURS, found {pair!r}")
+        names[theirs.strip()] = ours.strip()
+    return names or None
+
+
+def _associate_all(
+    paths: list[Path], out: Path | None, settings: Settings, reading: dict, workers: int
+) -> None:
+    """All logs, in one process or several; one log's error does not stop the others."""
+    from tracker.batch import associate_logs
+    from tracker.cli.progress import watched
+
+    several = len(paths) > 1
+    failures: list[MargentError] = []
+    for outcome in associate_logs(
+        paths, out, settings, reading, workers, lambda frames, total: watched(frames, total=total, label="frames")
+    ):
+        if isinstance(outcome.error, MargentError):
+            if not several:
+                raise outcome.error
+            print(f"margent: {outcome.error}", file=sys.stderr)
+            failures.append(outcome.error)
+        else:
+            _report(outcome.facts, outcome.folder)
+    if failures:
+        raise InputError(f"{len(failures)} of {len(paths)} logs failed, see above")
+
+
+def _report(facts: dict, folder: Path) -> None:
+    counts, proof = facts["counts"], facts["certificate"]
+    for note in facts["notes"]:
+        print(f"{facts['name']}: note: {note}", file=sys.stderr)
+    if counts["rejected_rows"]:
+        print(
+            f"{facts['name']}: {counts['rejected_rows']} rows rejected, listed with their reasons "
+            f"in {folder / 'rejected.csv'}",
+            file=sys.stderr,
+        )
+    print(
+        f"{facts['name']}: {counts['frames']} frames, {counts['detections']} detections, "
+        f"{counts['tracks_confirmed']} tracks in {folder} "
+        f"(every assignment proved optimal, largest gap {proof['largest_gap']:.1e})",
+        file=sys.stderr,
+    )

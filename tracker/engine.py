@@ -1,0 +1,252 @@
+"""The per-frame loop: predict, associate, update, lifecycle — one call a stage, in order.
+
+Offline runs, live runs, tuning and tests all use this one loop.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from tracker.association import TierDecision, associate
+from tracker.association.rule import association_rules
+from tracker.errors import UsageError
+from tracker.kernels.lifecycle import ENDED, UNCHANGED, advance, expire
+from tracker.lifecycle.rules import Reason
+from tracker.lifecycle.table import TrackTable
+from tracker.log.model import Codes, Floats, Frame, Ints, Kind
+from tracker.motion import motion_model
+from tracker.results.tracks import TrackState
+from tracker.settings import Settings
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Transitions:
+    """State changes of one frame, in order: (k,) arrays."""
+
+    track: Ints
+    before: NDArray[np.int8]  # TrackState, -1 for a birth
+    after: NDArray[np.int8]  # TrackState
+    reason: NDArray[np.int8]  # tracker.lifecycle.rules.Reason
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class FrameResult:
+    """The live tracks after one frame, and how they came about. All arrays are copies.
+
+    track, state, score, label : (n,).   detection : (n,) paired detection, -1 for none.
+    estimate : (n, d) in measurement space (`tracker.log.model`), rate : (n, d) its velocity
+    per second, covariance : (n, d, d) of the estimate.
+    tiers : what each tier decided; its `track` indexes `considered`.
+    considered : (k,) ids of the tracks that were live when the frame was associated.
+    """
+
+    number: int
+    time: float
+    track: Ints
+    state: NDArray[np.int8]
+    estimate: Floats
+    rate: Floats
+    covariance: Floats
+    score: Floats
+    label: Codes
+    detection: Ints
+    transitions: Transitions
+    tiers: tuple[TierDecision, ...]
+    considered: Ints
+
+    def __len__(self) -> int:
+        return len(self.track)
+
+
+class Engine:
+    """A tracker that is fed one frame at a time.
+
+    >>> engine = Engine(Settings(), Kind.POINT)
+    >>> first = Frame.of_points(1, 0.0, [[2.0, 1.0]])
+    >>> engine.step(first).track
+    array([1])
+
+    Parameters
+    ----------
+    settings : all settings.   kind : what is measured.
+    want_margins : whether margins are measured (they cost a part of the association time).
+
+    Raises SettingsError if the settings contradict the kind.
+    """
+
+    def __init__(
+        self,
+        settings: Settings | None = None,
+        kind: Kind | str = Kind.BOX,
+        *,
+        want_margins: bool = True,
+    ) -> None:
+        self.settings = settings or Settings()
+        self.kind = Kind(kind)
+        self.rules = association_rules(self.settings, self.kind)
+        self.motion = motion_model(self.settings, self.kind)
+        self.table = TrackTable(self.motion.states)
+        self.want_margins = want_margins
+        self.now = -np.inf
+        self._birth_score = self.settings.lifecycle.birth_score
+
+    def step(self, frame: Frame) -> FrameResult:
+        """Take one frame in; frames must come in order of time.
+
+        Raises UsageError for a frame that is not later than the one before, InputError for a
+        frame with too many candidates, CertificateError if an assignment is not proved optimal.
+        """
+        elapsed = self._elapse(frame)
+        life = self.settings.lifecycle
+        table = self.table
+
+        # Tracks past their coasting limit end before they can take a detection.
+        late = expire(table.state, table.last_seen, frame.time, life.coast_seconds)
+        ended = self._end(late)
+
+        self.motion.predict(table.mean, table.covariance, elapsed)
+        variance = self.motion.measurement_variance(frame.z, frame.sigma)
+        tiers, pairing = associate(self.rules, table, frame, variance, self.want_margins)
+        considered = table.identity.copy()
+
+        rows = np.flatnonzero(pairing >= 0)
+        taken = pairing[rows]
+        self.motion.update(table.mean, table.covariance, rows, frame.z[taken], variance[taken])
+        self._take_over(rows, taken, frame)
+
+        before = table.state.copy()
+        reason = advance(
+            table.state,
+            table.hits,
+            table.age,
+            table.last_seen,
+            pairing >= 0,
+            frame.time,
+            life.confirm_hits,
+            life.confirm_window,
+        )
+        changed = np.flatnonzero(reason != UNCHANGED)
+        transitions = [
+            ended,
+            Transitions(
+                considered[changed], before[changed], table.state[changed], reason[changed]
+            ),
+        ]
+        if len(changed):
+            alive = table.state != ENDED
+            if not alive.all():
+                table.keep(alive)
+                pairing = pairing[alive]
+        born, pairing = self._give_birth(frame, variance, pairing, taken)
+        transitions += born
+        return self._result(frame, pairing, transitions, tiers, considered)
+
+    def _elapse(self, frame: Frame) -> float:
+        elapsed = frame.time - self.now
+        if not elapsed > 0.0:
+            raise UsageError(
+                f"frame {frame.number} at {frame.time} s does not come after the frame before, "
+                f"at {self.now} s; feed frames in order of time"
+            )
+        self.now = frame.time
+        return elapsed if np.isfinite(elapsed) else 0.0
+
+    def _end(self, gone: NDArray[np.bool_]) -> Transitions:
+        rows = np.flatnonzero(gone)
+        table = self.table
+        ended = Transitions(
+            table.identity[rows],
+            table.state[rows],
+            np.full(len(rows), TrackState.ENDED, np.int8),
+            np.full(len(rows), Reason.COAST_LIMIT, np.int8),
+        )
+        if len(rows):
+            table.keep(~gone)
+        return ended
+
+    def _take_over(self, rows: Ints, taken: Ints, frame: Frame) -> None:
+        """Score and label of the detections go to their tracks; the first label stays."""
+        table = self.table
+        table.score[rows] = frame.score[taken]
+        unnamed = table.label[rows] < 0
+        if unnamed.any():
+            table.label[rows[unnamed]] = frame.label[taken[unnamed]]
+
+    def _give_birth(
+        self, frame: Frame, variance: Floats, pairing: Ints, taken: Ints
+    ) -> tuple[list[Transitions], Ints]:
+        if len(taken) == len(frame):
+            return [], pairing
+        free = np.ones(len(frame), np.bool_)
+        free[taken] = False
+        if self._birth_score is not None:
+            free &= ~(frame.score < self._birth_score)  # a missing score does not stand in the way
+        chosen = np.flatnonzero(free)
+        if not len(chosen):
+            return [], pairing
+        table = self.table
+        mean, covariance = self.motion.initiate(frame.z[chosen], variance[chosen])
+        identity = table.append(
+            mean, covariance, frame.score[chosen], frame.label[chosen], frame.time
+        )
+        count = len(chosen)
+        events = [
+            Transitions(
+                identity,
+                np.full(count, -1, np.int8),
+                np.full(count, TrackState.TENTATIVE, np.int8),
+                np.full(count, Reason.BORN, np.int8),
+            )
+        ]
+        if self.settings.lifecycle.confirm_hits == 1:
+            table.state[-count:] = TrackState.CONFIRMED
+            events.append(
+                Transitions(
+                    identity,
+                    np.full(count, TrackState.TENTATIVE, np.int8),
+                    np.full(count, TrackState.CONFIRMED, np.int8),
+                    np.full(count, Reason.HITS_REACHED, np.int8),
+                )
+            )
+        return events, np.concatenate((pairing, chosen))
+
+    def _result(
+        self,
+        frame: Frame,
+        pairing: Ints,
+        transitions: list[Transitions],
+        tiers: tuple[TierDecision, ...],
+        considered: Ints,
+    ) -> FrameResult:
+        table = self.table
+        d = self.kind.dimension
+        return FrameResult(
+            number=frame.number,
+            time=frame.time,
+            track=table.identity.copy(),
+            state=table.state.copy(),
+            estimate=table.mean[:, :d].copy(),
+            rate=table.mean[:, d:].copy(),
+            covariance=table.covariance[:, :d, :d].copy(),
+            score=table.score.copy(),
+            label=table.label.copy(),
+            detection=pairing,
+            transitions=_joined(transitions),
+            tiers=tiers,
+            considered=considered,
+        )
+
+
+def _joined(parts: list[Transitions]) -> Transitions:
+    filled = [part for part in parts if len(part.track)]
+    if len(filled) <= 1:
+        return filled[0] if filled else parts[0]
+    return Transitions(
+        np.concatenate([part.track for part in filled]),
+        np.concatenate([part.before for part in filled]),
+        np.concatenate([part.after for part in filled]),
+        np.concatenate([part.reason for part in filled]),
+    )

@@ -1,0 +1,156 @@
+"""Write a run folder, a chunk at a time: tracks, events, rejections, settings, facts."""
+
+from __future__ import annotations
+
+import csv
+import json
+from pathlib import Path
+from types import TracebackType
+from typing import Any, Self
+
+import pyarrow as pa
+import pyarrow.csv
+import pyarrow.parquet as pq
+
+from tracker.engine import FrameResult
+from tracker.lifecycle.rules import Reason
+from tracker.log.model import DetectionLog, Rejection
+from tracker.results.recorder import Recorder, TrackRows
+from tracker.results.table import csv_table, parquet_table
+from tracker.results.tracks import TrackState
+from tracker.settings import Settings, settings_as_toml
+
+CHUNK_ROWS = 65_536
+EVENT_COLUMNS = ("frame", "time", "track", "from", "to", "reason")
+REJECTION_COLUMNS = ("line", "column", "reason", "text")
+
+
+class RunWriter:
+    """Writes into `folder`, which must exist; use as a context manager.
+
+    The rows' order and grouping depend on the log and the settings alone, so the same input gives
+    the same bytes.
+    """
+
+    def __init__(self, folder: Path, log: DetectionLog, settings: Settings) -> None:
+        self._folder = folder
+        self._log = log
+        self._settings = settings
+        self._recorder = Recorder(settings)
+        self._waiting: list[TrackRows] = []
+        self._waiting_rows = 0
+        self._parquet: pq.ParquetWriter | None = None
+        self.counts = {"tracks_confirmed": 0, "track_rows": 0, "reported_rows": 0, "events": 0}
+        self._tracks = (folder / "tracks.csv").open("wb")
+        self._events = (folder / "events.csv").open("w", encoding="utf-8", newline="")
+        self._event_rows = csv.writer(self._events, lineterminator="\n")
+        self._event_rows.writerow(EVENT_COLUMNS)
+
+    def __enter__(self) -> Self:
+        return self
+
+    def __exit__(
+        self,
+        kind: type[BaseException] | None,
+        error: BaseException | None,
+        trace: TracebackType | None,
+    ) -> None:
+        self._tracks.close()
+        self._events.close()
+        if self._parquet is not None:
+            self._parquet.close()
+
+    def add(self, frame: Any, result: FrameResult) -> None:
+        """Take one frame's result in."""
+        self._write_events(result)
+        for rows in self._recorder.add(frame, result):
+            self._wait(rows)
+
+    def finish(self, facts: dict[str, Any]) -> None:
+        """Write everything that was held back, and `facts` as run.json."""
+        for rows in self._recorder.finish():
+            self._wait(rows)
+        self._flush()
+        self.counts["tracks_confirmed"] = self._recorder.confirmed
+        write_rejections(self._folder / "rejected.csv", self._log.rejections)
+        (self._folder / "settings.toml").write_text(
+            settings_as_toml(self._settings), encoding="utf-8"
+        )
+        write_json(self._folder / "run.json", facts | {"counts": facts["counts"] | self.counts})
+
+    def _write_events(self, result: FrameResult) -> None:
+        events = result.transitions
+        for track, before, after, reason in zip(
+            events.track.tolist(),
+            events.before.tolist(),
+            events.after.tolist(),
+            events.reason.tolist(),
+            strict=True,
+        ):
+            self._event_rows.writerow(
+                (
+                    result.number,
+                    f"{result.time:.6f}",
+                    track,
+                    TrackState(before).word if before >= 0 else "",
+                    TrackState(after).word,
+                    Reason(reason).words,
+                )
+            )
+        self.counts["events"] += len(events.track)
+
+    def _wait(self, rows: TrackRows) -> None:
+        self._waiting.append(rows)
+        self._waiting_rows += len(rows)
+        if self._waiting_rows >= CHUNK_ROWS:
+            self._flush()
+
+    def _flush(self) -> None:
+        if not self._waiting and self._parquet is not None:
+            return
+        kind, labels = self._log.kind, self._log.labels
+        rows = TrackRows.join(self._waiting)
+        self._waiting, self._waiting_rows = [], 0
+        first = self._parquet is None
+        table = parquet_table(rows, kind, labels)
+        if self._parquet is None:
+            self._parquet = pq.ParquetWriter(
+                self._folder / "tracks.parquet", table.schema, compression="zstd"
+            )
+        self._parquet.write_table(table)
+        write_csv_chunk(self._tracks, csv_table(rows, kind, labels), header=first)
+        self.counts["track_rows"] += len(rows)
+        self.counts["reported_rows"] += int(rows.reported.sum())
+
+
+def write_csv_chunk(sink: Any, table: pa.Table, *, header: bool) -> None:
+    """Append a table to a CSV; text is quoted only where it must be."""
+    if header:
+        sink.write((",".join(table.column_names) + "\n").encode())
+    plain = not any(
+        pa.types.is_string(field.type) and _needs_quotes(table[field.name])
+        for field in table.schema
+    )
+    options = pa.csv.WriteOptions(include_header=False, quoting_style="none" if plain else "needed")
+    pa.csv.write_csv(table, sink, options)
+
+
+def _needs_quotes(words: pa.ChunkedArray) -> bool:
+    return any(
+        word is not None and any(sign in word for sign in ',"\n\r')
+        for word in words.unique().to_pylist()
+    )
+
+
+def write_rejections(path: Path, rejections: tuple[Rejection, ...]) -> None:
+    """rejected.csv: every row that was not used, why, and its original text."""
+    with path.open("w", encoding="utf-8", newline="") as file:
+        rows = csv.writer(file, lineterminator="\n")
+        rows.writerow(REJECTION_COLUMNS)
+        for item in rejections:
+            rows.writerow((item.line, item.column, item.reason, item.text))
+
+
+def write_json(path: Path, values: dict[str, Any]) -> None:
+    """Indented JSON in the order given."""
+    path.write_text(json.dumps(values, indent=2, ensure_ascii=False) + "\n", encoding="utf-8")
