@@ -1,0 +1,72 @@
+"""Margent: multi-object tracking association with a proof, a margin and a reason.
+
+>>> from tracker import Engine, Settings, read_log, evaluate
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from tracker.engine import Engine, FrameResult
+    from tracker.errors import MargentError
+    from tracker.evaluation import evaluate
+    from tracker.log import DetectionLog, Frame, Kind, Truth, read_log, read_truth
+    from tracker.offline import associate_log, track_log
+    from tracker.results import Tracks, TrackState, read_run
+    from tracker.settings import Settings, load_settings
+
+# Where each public name lives. They are imported on first use (PEP 562), so that
+# `margent --help` does not wait for numba.
+_HOME = {
+    "DetectionLog": "tracker.log",
+    "Engine": "tracker.engine",
+    "Frame": "tracker.log",
+    "FrameResult": "tracker.engine",
+    "Kind": "tracker.log",
+    "MargentError": "tracker.errors",
+    "Settings": "tracker.settings",
+    "TrackState": "tracker.results",
+    "Tracks": "tracker.results",
+    "Truth": "tracker.log",
+    "associate_log": "tracker.offline",
+    "evaluate": "tracker.evaluation",
+    "load_settings": "tracker.settings",
+    "read_log": "tracker.log",
+    "read_run": "tracker.results",
+    "read_truth": "tracker.log",
+    "track_log": "tracker.offline",
+}
+
+__all__ = [
+    "DetectionLog",
+    "Engine",
+    "Frame",
+    "FrameResult",
+    "Kind",
+    "MargentError",
+    "Settings",
+    "TrackState",
+    "Tracks",
+    "Truth",
+    "associate_log",
+    "evaluate",
+    "load_settings",
+    "read_log",
+    "read_run",
+    "read_truth",
+    "track_log",
+]
+
+
+def __getattr__(name: str) -> Any:
+    if name not in _HOME:
+        raise AttributeError(f"module 'tracker' has no attribute {name!r}")
+    value = getattr(import_module(_HOME[name]), name)
+    globals()[name] = value
+    return value
+
+
+def __dir__() -> list[str]:
+    return sorted(__all__)

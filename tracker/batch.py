@@ -1,4 +1,4 @@
-"""Several logs, one process or many: each worker takes whole logs, so results do not depend on it."""
+"""Several logs in one process or many; a worker takes whole logs, so results are the same."""
 
 from __future__ import annotations
 

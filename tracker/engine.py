@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from tracker.association import TierDecision, associate
 from tracker.association.rule import association_rules
 from tracker.errors import UsageError
-from tracker.kernels.lifecycle import ENDED, UNCHANGED, advance, expire
+from tracker.kernels.lifecycle import ENDED, HITS_REACHED, UNCHANGED, advance, expire
 from tracker.lifecycle.rules import Reason
 from tracker.lifecycle.table import TrackTable
 from tracker.log.model import Codes, Floats, Frame, Ints, Kind
@@ -33,14 +33,32 @@ class Transitions:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
+class Prediction:
+    """What the engine expected and saw when it associated a frame; rows as in `considered`.
+
+    estimate : (k, d) predicted measurement, covariance : (k, d, d) of it without measurement
+    noise.   state : (k,) lifecycle state before the frame.   unseen : (k,) seconds since the
+    last detection.   variance : (m, d) measurement variances of the detections.
+    """
+
+    estimate: Floats
+    covariance: Floats
+    state: NDArray[np.int8]
+    unseen: Floats
+    variance: Floats
+
+
+@dataclass(frozen=True, slots=True, eq=False)
 class FrameResult:
     """The live tracks after one frame, and how they came about. All arrays are copies.
 
     track, state, score, label : (n,).   detection : (n,) paired detection, -1 for none.
     estimate : (n, d) in measurement space (`tracker.log.model`), rate : (n, d) its velocity
     per second, covariance : (n, d, d) of the estimate.
+    confidence : (n,) identity confidence, nan if the engine does not explain.
     tiers : what each tier decided; its `track` indexes `considered`.
     considered : (k,) ids of the tracks that were live when the frame was associated.
+    prediction : None if the engine does not explain.
     """
 
     number: int
@@ -52,10 +70,12 @@ class FrameResult:
     covariance: Floats
     score: Floats
     label: Codes
+    confidence: Floats
     detection: Ints
     transitions: Transitions
     tiers: tuple[TierDecision, ...]
     considered: Ints
+    prediction: Prediction | None
 
     def __len__(self) -> int:
         return len(self.track)
@@ -72,7 +92,8 @@ class Engine:
     Parameters
     ----------
     settings : all settings.   kind : what is measured.
-    want_margins : whether margins are measured (they cost a part of the association time).
+    explain : whether margins, identity confidence and predictions are kept (they cost a part of
+    the association time; decisions are the same without).
 
     Raises SettingsError if the settings contradict the kind.
     """
@@ -82,14 +103,14 @@ class Engine:
         settings: Settings | None = None,
         kind: Kind | str = Kind.BOX,
         *,
-        want_margins: bool = True,
+        explain: bool = True,
     ) -> None:
         self.settings = settings or Settings()
         self.kind = Kind(kind)
         self.rules = association_rules(self.settings, self.kind)
         self.motion = motion_model(self.settings, self.kind)
         self.table = TrackTable(self.motion.states)
-        self.want_margins = want_margins
+        self.explain = explain
         self.now = -np.inf
         self._birth_score = self.settings.lifecycle.birth_score
 
@@ -109,8 +130,11 @@ class Engine:
 
         self.motion.predict(table.mean, table.covariance, elapsed)
         variance = self.motion.measurement_variance(frame.z, frame.sigma)
-        tiers, pairing = associate(self.rules, table, frame, variance, self.want_margins)
+        tiers, pairing = associate(self.rules, table, frame, variance, self.explain)
         considered = table.identity.copy()
+        prediction = self._prediction(frame, variance) if self.explain else None
+        if self.explain:
+            self._weigh(tiers)
 
         rows = np.flatnonzero(pairing >= 0)
         taken = pairing[rows]
@@ -129,6 +153,8 @@ class Engine:
             life.confirm_window,
         )
         changed = np.flatnonzero(reason != UNCHANGED)
+        # Identity is claimed from confirmation on, so confidence starts there.
+        table.log_confidence[changed[reason[changed] == HITS_REACHED]] = 0.0
         transitions = [
             ended,
             Transitions(
@@ -142,7 +168,7 @@ class Engine:
                 pairing = pairing[alive]
         born, pairing = self._give_birth(frame, variance, pairing, taken)
         transitions += born
-        return self._result(frame, pairing, transitions, tiers, considered)
+        return self._result(frame, pairing, transitions, tiers, considered, prediction)
 
     def _elapse(self, frame: Frame) -> float:
         elapsed = frame.time - self.now
@@ -166,6 +192,22 @@ class Engine:
         if len(rows):
             table.keep(~gone)
         return ended
+
+    def _prediction(self, frame: Frame, variance: Floats) -> Prediction:
+        table = self.table
+        d = self.kind.dimension
+        return Prediction(
+            table.mean[:, :d].copy(),
+            table.covariance[:, :d, :d].copy(),
+            table.state.copy(),
+            frame.time - table.last_seen,
+            variance,
+        )
+
+    def _weigh(self, tiers: tuple[TierDecision, ...]) -> None:
+        """Identity confidence: times 1 / (1 + exp(−margin)) for each decision about a track."""
+        for tier in tiers:
+            self.table.log_confidence[tier.track] -= np.log1p(np.exp(-tier.solution.row_margin))
 
     def _take_over(self, rows: Ints, taken: Ints, frame: Frame) -> None:
         """Score and label of the detections go to their tracks; the first label stays."""
@@ -220,6 +262,7 @@ class Engine:
         transitions: list[Transitions],
         tiers: tuple[TierDecision, ...],
         considered: Ints,
+        prediction: Prediction | None,
     ) -> FrameResult:
         table = self.table
         d = self.kind.dimension
@@ -233,10 +276,12 @@ class Engine:
             covariance=table.covariance[:, :d, :d].copy(),
             score=table.score.copy(),
             label=table.label.copy(),
+            confidence=np.exp(table.log_confidence),
             detection=pairing,
             transitions=_joined(transitions),
             tiers=tiers,
             considered=considered,
+            prediction=prediction,
         )
 
 

@@ -103,8 +103,8 @@ def track_log(log: DetectionLog, settings: Settings | None = None) -> Tracks:
     """
     settings = settings or Settings()
     used = used_detections(log, settings)
-    engine = Engine(settings, log.kind, want_margins=False)
-    recorder = Recorder(settings)
+    engine = Engine(settings, log.kind, explain=False)
+    recorder = Recorder(settings, log.kind)
     parts: list[TrackRows] = []
     for frame in frames_of(used, settings):
         parts += recorder.add(frame, engine.step(frame))

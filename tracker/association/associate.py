@@ -45,7 +45,7 @@ def associate(
     table: TrackTable,
     frame: Frame,
     variance: Floats,
-    want_margins: bool,
+    explain: bool,
 ) -> tuple[tuple[TierDecision, ...], Ints]:
     """Decide a frame.
 
@@ -64,7 +64,7 @@ def associate(
             if np.isfinite(rule.score_below):
                 wanted &= score < rule.score_below
             detections = np.flatnonzero(wanted)
-        decision = _decide(k, rule, table, frame, variance, tracks, detections, want_margins)
+        decision = _decide(k, rule, table, frame, variance, tracks, detections, explain)
         decisions.append(decision)
         column = decision.solution.answer.row_column
         if tracks is None:
@@ -83,7 +83,7 @@ def _decide(
     variance: Floats,
     tracks: Ints | None,
     detections: Ints | None,
-    want_margins: bool,
+    explain: bool,
 ) -> TierDecision:
     mean, covariance, z = table.mean, table.covariance, frame.z
     if tracks is not None:
@@ -120,7 +120,7 @@ def _decide(
         np.full(len(mean), rule.miss),
         np.zeros(len(z)),
     )
-    solution = solve(problem, want_margins)
+    solution = solve(problem, explain)
     component, gap, violation = worst_proof(solution.certificate)
     if not max(abs(gap), violation) <= PROOF_TOLERANCE:
         raise CertificateError(

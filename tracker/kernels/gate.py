@@ -70,7 +70,7 @@ def gate_candidates(
     use_grid = use_grid and (threshold < np.inf or overlap_floor > 0.0)
     grid = build_grid(other_low if use_grid else other_low[:0], other_high, cell)
     d = z.shape[1]
-    scratch = np.empty((d, d))
+    scratch = np.empty((d + 1, d))
     start = np.zeros(tracks + 1, np.int64)
     capacity = max(16, 4 * max(tracks, detections))
     column = np.empty(capacity, np.int64)

@@ -50,8 +50,8 @@ def worst_proof(certificate: Certificate) -> tuple[int, float, float]:
     for c in range(len(certificate.gap)):
         scale = max(1.0, certificate.scale[c])
         here = max(abs(certificate.gap[c]), certificate.violation[c]) / scale
-        if not here <= largest:
-            largest = here
+        if here > largest or np.isnan(certificate.gap[c]) or np.isnan(certificate.violation[c]):
+            largest = here if here > largest else np.inf  # not-a-number is worse than anything
             worst = c
             gap = certificate.gap[c] / scale
             violation = certificate.violation[c] / scale

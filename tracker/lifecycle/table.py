@@ -23,6 +23,7 @@ class TrackTable:
     last_seen: Floats  # (n,) seconds, time of the last detection
     score: Floats  # (n,) score of the last detection
     label: Codes  # (n,) label of the first detection that had one
+    log_confidence: Floats  # (n,) natural log of the identity confidence
     mean: Floats  # (n, s)
     covariance: Floats  # (n, s, s)
 
@@ -34,6 +35,7 @@ class TrackTable:
         "last_seen",
         "score",
         "label",
+        "log_confidence",
         "mean",
         "covariance",
     )
@@ -49,6 +51,7 @@ class TrackTable:
             "last_seen": np.empty(0),
             "score": np.empty(0),
             "label": np.empty(0, np.int32),
+            "log_confidence": np.empty(0),
             "mean": np.empty((0, states)),
             "covariance": np.empty((0, states, states)),
         }
@@ -78,6 +81,7 @@ class TrackTable:
             "last_seen": now,
             "score": score,
             "label": label,
+            "log_confidence": 0.0,
             "mean": mean,
             "covariance": covariance,
         }

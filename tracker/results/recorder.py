@@ -14,7 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tracker.engine import FrameResult
-from tracker.log.model import Codes, Floats, Frame, Ints
+from tracker.log.model import Codes, Floats, Frame, Ints, Kind
 from tracker.results.tracks import TrackState
 from tracker.settings import Settings
 
@@ -26,11 +26,13 @@ class TrackRows:
     frame: Ints
     time: Floats
     track: Ints
-    z: Floats
+    z: Floats  # what is shown: detection or estimate, by ``output.position``
+    estimate: Floats
     rate: Floats
     covariance: Floats  # (n, d (d + 1) / 2) upper triangle, row by row
     score: Floats
     label: Codes
+    confidence: Floats
     state: NDArray[np.int8]
     reported: NDArray[np.bool_]
     line: Ints
@@ -51,7 +53,9 @@ class TrackRows:
 class Recorder:
     """Collects frame results and yields finished rows."""
 
-    def __init__(self, settings: Settings) -> None:
+    def __init__(self, settings: Settings, kind: Kind) -> None:
+        position = settings.output.position
+        self._show_detected = kind is Kind.BOX if position == "auto" else position == "detected"
         self._wait = settings.lifecycle.confirm_window
         self._early = settings.output.report_before_confirmation
         self._coasting_seconds = settings.output.report_coasting_seconds
@@ -93,6 +97,10 @@ class Recorder:
         paired = result.detection >= 0
         line = np.full(count, -1, np.int64)
         line[paired] = frame.line[result.detection[paired]]
+        shown = result.estimate
+        if self._show_detected:
+            shown = shown.copy()
+            shown[paired] = frame.z[result.detection[paired]]
         reported = paired.copy()
         if self._coasting_seconds > 0.0:
             unseen = result.time - self._last_seen[result.track]
@@ -107,11 +115,13 @@ class Recorder:
             np.full(count, result.number, np.int64),
             np.full(count, result.time),
             result.track,
+            shown,
             result.estimate,
             result.rate,
             result.covariance[:, self._corner[0], self._corner[1]],
             result.score,
             result.label,
+            result.confidence,
             result.state,
             reported,
             line,

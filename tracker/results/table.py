@@ -29,6 +29,7 @@ def csv_table(rows: TrackRows, kind: Kind, labels: tuple[str, ...]) -> pa.Table:
     columns |= {
         "score": _missing_if_nan(rows.score),
         "label": label_words(rows.label, labels),
+        "confidence": _missing_if_nan(np.round(rows.confidence, 4)),
         "state": STATE_WORDS.take(pa.array(rows.state)),
         "reported": pa.array(rows.reported.astype(np.int8)),
         "line": pa.array(rows.line, mask=rows.line < 0),
@@ -39,8 +40,8 @@ def csv_table(rows: TrackRows, kind: Kind, labels: tuple[str, ...]) -> pa.Table:
 def parquet_table(rows: TrackRows, kind: Kind, labels: tuple[str, ...]) -> pa.Table:
     """What tracks.parquet holds of some rows: all of it, covariances included.
 
-    `covariance` is the upper triangle, row by row, of the estimate in filter order (for boxes
-    centre x, centre y, width, height).
+    `estimate` is in filter order (for boxes centre x, centre y, width, height), `covariance` the
+    upper triangle of its covariance, row by row.
     """
     columns: dict[str, pa.Array] = {
         "frame": pa.array(rows.frame),
@@ -52,16 +53,15 @@ def parquet_table(rows: TrackRows, kind: Kind, labels: tuple[str, ...]) -> pa.Ta
         columns[name] = pa.array(shown[:, k])
     for k, name in enumerate(rate_names(kind)):
         columns[name] = pa.array(rows.rate[:, k])
-    triangle = rows.covariance.shape[1]
     columns |= {
         "score": _missing_if_nan(rows.score),
         "label": label_words(rows.label, labels),
+        "confidence": _missing_if_nan(rows.confidence),
         "state": STATE_WORDS.take(pa.array(rows.state)),
         "reported": pa.array(rows.reported),
         "line": pa.array(rows.line, mask=rows.line < 0),
-        "covariance": pa.FixedSizeListArray.from_arrays(
-            pa.array(np.ascontiguousarray(rows.covariance).ravel()), triangle
-        ),
+        "estimate": _lists(rows.estimate),
+        "covariance": _lists(rows.covariance),
     }
     return pa.table(columns)
 
@@ -78,6 +78,11 @@ def label_words(codes: Codes, labels: tuple[str, ...]) -> pa.Array:
     """Label texts, null for code -1."""
     words = pa.array(labels, pa.string())
     return words.take(pa.array(codes, mask=codes < 0))
+
+
+def _lists(values: Floats) -> pa.Array:
+    flat = pa.array(np.ascontiguousarray(values).ravel())
+    return pa.FixedSizeListArray.from_arrays(flat, values.shape[1])
 
 
 def _as_written(z: Floats, kind: Kind) -> Floats:

@@ -13,8 +13,9 @@ import pyarrow.csv
 import pyarrow.parquet as pq
 
 from tracker.engine import FrameResult
+from tracker.ledger import Ledger
 from tracker.lifecycle.rules import Reason
-from tracker.log.model import DetectionLog, Rejection
+from tracker.log.model import DetectionLog, Frame, Rejection
 from tracker.results.recorder import Recorder, TrackRows
 from tracker.results.table import csv_table, parquet_table
 from tracker.results.tracks import TrackState
@@ -36,7 +37,8 @@ class RunWriter:
         self._folder = folder
         self._log = log
         self._settings = settings
-        self._recorder = Recorder(settings)
+        self._recorder = Recorder(settings, log.kind)
+        self._ledger = Ledger(folder, log.kind, settings, log.labels)
         self._waiting: list[TrackRows] = []
         self._waiting_rows = 0
         self._parquet: pq.ParquetWriter | None = None
@@ -55,14 +57,16 @@ class RunWriter:
         error: BaseException | None,
         trace: TracebackType | None,
     ) -> None:
+        self._ledger.close()
         self._tracks.close()
         self._events.close()
         if self._parquet is not None:
             self._parquet.close()
 
-    def add(self, frame: Any, result: FrameResult) -> None:
+    def add(self, frame: Frame, result: FrameResult) -> None:
         """Take one frame's result in."""
         self._write_events(result)
+        self._ledger.add(frame, result)
         for rows in self._recorder.add(frame, result):
             self._wait(rows)
 
@@ -71,6 +75,7 @@ class RunWriter:
         for rows in self._recorder.finish():
             self._wait(rows)
         self._flush()
+        self.counts["contested_decisions"] = self._ledger.contested
         self.counts["tracks_confirmed"] = self._recorder.confirmed
         write_rejections(self._folder / "rejected.csv", self._log.rejections)
         (self._folder / "settings.toml").write_text(

@@ -68,7 +68,7 @@ class MotionSettings(_Section):
             "box scales (or length units) per s^1.5",
             "Bar-Shalom, Li and Kirubarajan 2001, ch. 6",
         ),
-    ] = 1.0
+    ] = 5.0
     size_noise: Annotated[
         float,
         NonNegative,
@@ -78,7 +78,7 @@ class MotionSettings(_Section):
         float,
         Positive,
         about("Standard deviation of a new track's velocity", "box scales (or length units) / s"),
-    ] = 1.0
+    ] = 2.0
     initial_size_rate_sigma: Annotated[
         float, Positive, about("Standard deviation of a new track's size rates", "box scales / s")
     ] = 0.2
@@ -96,7 +96,7 @@ class MeasurementSettings(_Section):
     ] = "auto"
     position_sigma: Annotated[
         float, Positive, about("Standard deviation of the centre or point", "see unit")
-    ] = 0.08
+    ] = 0.05
     size_sigma: Annotated[
         float, Positive, about("Standard deviation of width and height", "see unit")
     ] = 0.1
@@ -129,7 +129,7 @@ class OverlapSettings(_Section):
 
     nats: Annotated[
         float, Positive, about("How much evidence the whole range of IoU carries", "nats")
-    ] = 10.0
+    ] = 8.0
     neutral: Annotated[
         float, Meta(ge=0.0, le=1.0), about("IoU that speaks neither for nor against the pair")
     ] = 0.5
@@ -200,11 +200,19 @@ class LifecycleSettings(_Section):
         float,
         NonNegative,
         about("A confirmed track ends once its last detection is older than this", "s"),
-    ] = 1.0
+    ] = 1.5
 
 
 class OutputSettings(_Section):
-    """Which rows of tracks.csv count as reported."""
+    """Which rows of tracks.csv count as reported, and what they say."""
+
+    position: Annotated[
+        Literal["auto", "detected", "estimated"],
+        about(
+            "What a row with a detection shows: the detection itself or the filtered estimate; "
+            "'auto' is detected for boxes, estimated for points (tracks.parquet has both)"
+        ),
+    ] = "auto"
 
     report_before_confirmation: Annotated[
         bool,
@@ -215,6 +223,25 @@ class OutputSettings(_Section):
         NonNegative,
         about("Report coasting rows up to this long after the last detection", "s"),
     ] = 0.0
+
+
+class LedgerSettings(_Section):
+    """What decisions.parquet keeps."""
+
+    level: Annotated[
+        Literal["none", "contested", "full"],
+        about(
+            "'contested' keeps contested components whole and of the others what was chosen; "
+            "'full' keeps every candidate"
+        ),
+    ] = "contested"
+    contested_margin: Annotated[
+        float,
+        NonNegative,
+        about(
+            "Decisions with a margin below this are contested; 2.3 nats is odds of 10 to 1", "nats"
+        ),
+    ] = 2.3
 
 
 class Settings(_Section):
@@ -229,3 +256,4 @@ class Settings(_Section):
     tiers: Annotated[tuple[TierSettings, ...], Meta(min_length=1)] = (TierSettings(),)
     lifecycle: LifecycleSettings = LifecycleSettings()
     output: OutputSettings = OutputSettings()
+    ledger: LedgerSettings = LedgerSettings()

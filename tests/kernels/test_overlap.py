@@ -1,0 +1,39 @@
+"""IoU against plain loops and shapely."""
+
+import numpy as np
+import pytest
+
+from tests.reference import overlap as twin
+from tracker.kernels.overlap import box_overlap, overlap_matrix
+
+shapely = pytest.importorskip("shapely")
+
+
+def boxes(seed, count=40):
+    rng = np.random.default_rng(seed)
+    return np.column_stack((rng.uniform(0, 20, (count, 2)), rng.uniform(0.5, 9, (count, 2))))
+
+
+def test_matrix_equals_the_twin():
+    a, b = boxes(1), boxes(2, 30)
+    np.testing.assert_allclose(overlap_matrix(a, b), twin.overlap_matrix(a, b), atol=1e-14)
+
+
+def test_equals_shapely():
+    def polygon(box):
+        x, y, w, h = box
+        return shapely.box(x - w / 2, y - h / 2, x + w / 2, y + h / 2)
+
+    for a, b in zip(boxes(3), boxes(4), strict=True):
+        one, other = polygon(a), polygon(b)
+        expected = one.intersection(other).area / one.union(other).area
+        assert box_overlap(a, b) == pytest.approx(expected, abs=1e-12)
+
+
+def test_edges_and_degenerate_boxes():
+    unit = np.array([0.0, 0.0, 1.0, 1.0])
+    assert box_overlap(unit, unit) == 1.0
+    assert box_overlap(unit, unit + np.array([1.0, 0, 0, 0])) == 0.0  # they only touch
+    assert box_overlap(unit, np.array([0.0, 0.0, 0.0, 0.0])) == pytest.approx(0.0, abs=1e-17)
+    assert box_overlap(unit, np.array([0.0, 0.0, -3.0, 1.0])) == pytest.approx(0.0, abs=1e-8)
+    assert overlap_matrix(np.empty((0, 4)), boxes(1)).shape == (0, 40)
