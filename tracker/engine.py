@@ -13,7 +13,8 @@ from numpy.typing import NDArray
 from tracker.association import TierDecision, associate
 from tracker.association.rule import association_rules
 from tracker.errors import UsageError
-from tracker.kernels.lifecycle import ENDED, HITS_REACHED, UNCHANGED, advance, expire
+from tracker.kernels.lifecycle import ENDED, advance, expire, take_over, weigh
+from tracker.kernels.snapshot import measured_part
 from tracker.lifecycle.rules import Reason
 from tracker.lifecycle.table import TrackTable
 from tracker.log.model import Codes, Floats, Frame, Ints, Kind
@@ -22,7 +23,7 @@ from tracker.results.tracks import TrackState
 from tracker.settings import Settings
 
 
-@dataclass(frozen=True, slots=True, eq=False)
+@dataclass(slots=True, eq=False)
 class Transitions:
     """State changes of one frame, in order: (k,) arrays."""
 
@@ -32,7 +33,7 @@ class Transitions:
     reason: NDArray[np.int8]  # tracker.lifecycle.rules.Reason
 
 
-@dataclass(frozen=True, slots=True, eq=False)
+@dataclass(slots=True, eq=False)
 class Prediction:
     """What the engine expected and saw when it associated a frame; rows as in `considered`.
 
@@ -48,14 +49,14 @@ class Prediction:
     variance: Floats
 
 
-@dataclass(frozen=True, slots=True, eq=False)
+@dataclass(slots=True, eq=False)
 class FrameResult:
     """The live tracks after one frame, and how they came about. All arrays are copies.
 
     track, state, score, label : (n,).   detection : (n,) paired detection, -1 for none.
     estimate : (n, d) in measurement space (`tracker.log.model`), rate : (n, d) its velocity
     per second, covariance : (n, d, d) of the estimate.
-    confidence : (n,) identity confidence, nan if the engine does not explain.
+    confidence : (n,) identity confidence, None if the engine does not explain.
     tiers : what each tier decided; its `track` indexes `considered`.
     considered : (k,) ids of the tracks that were live when the frame was associated.
     prediction : None if the engine does not explain.
@@ -70,7 +71,7 @@ class FrameResult:
     covariance: Floats
     score: Floats
     label: Codes
-    confidence: Floats
+    confidence: Floats | None
     detection: Ints
     transitions: Transitions
     tiers: tuple[TierDecision, ...]
@@ -125,49 +126,42 @@ class Engine:
         table = self.table
 
         # Tracks past their coasting limit end before they can take a detection.
-        late = expire(table.state, table.last_seen, frame.time, life.coast_seconds)
-        ended = self._end(late)
+        late, count = expire(table.last_seen, frame.time, life.coast_seconds)
+        transitions = [self._end(late)] if count else []
 
         self.motion.predict(table.mean, table.covariance, elapsed)
         variance = self.motion.measurement_variance(frame.z, frame.sigma)
-        tiers, pairing = associate(self.rules, table, frame, variance, self.explain)
+        tiers, pairing = associate(
+            self.rules, table, frame, variance, self.motion.coupled, self.explain
+        )
         considered = table.identity.copy()
         prediction = self._prediction(frame, variance) if self.explain else None
         if self.explain:
             self._weigh(tiers)
 
-        rows = np.flatnonzero(pairing >= 0)
-        taken = pairing[rows]
-        self.motion.update(table.mean, table.covariance, rows, frame.z[taken], variance[taken])
-        self._take_over(rows, taken, frame)
-
-        before = table.state.copy()
-        reason = advance(
+        self.motion.update(table.mean, table.covariance, pairing, frame.z, variance)
+        paired = take_over(table.score, table.label, pairing, frame.score, frame.label)
+        changed, before, reason, ended = advance(
             table.state,
             table.hits,
             table.age,
             table.last_seen,
-            pairing >= 0,
+            table.log_confidence,
+            pairing,
             frame.time,
             life.confirm_hits,
             life.confirm_window,
         )
-        changed = np.flatnonzero(reason != UNCHANGED)
-        # Identity is claimed from confirmation on, so confidence starts there.
-        table.log_confidence[changed[reason[changed] == HITS_REACHED]] = 0.0
-        transitions = [
-            ended,
-            Transitions(
-                considered[changed], before[changed], table.state[changed], reason[changed]
-            ),
-        ]
         if len(changed):
+            after = table.state[changed]
+            transitions.append(Transitions(considered[changed], before, after, reason))
+        if ended:
             alive = table.state != ENDED
-            if not alive.all():
-                table.keep(alive)
-                pairing = pairing[alive]
-        born, pairing = self._give_birth(frame, variance, pairing, taken)
-        transitions += born
+            table.keep(alive)
+            pairing = pairing[alive]
+        if paired < len(frame):
+            born, pairing = self._give_birth(frame, variance, pairing)
+            transitions += born
         return self._result(frame, pairing, transitions, tiers, considered, prediction)
 
     def _elapse(self, frame: Frame) -> float:
@@ -195,35 +189,20 @@ class Engine:
 
     def _prediction(self, frame: Frame, variance: Floats) -> Prediction:
         table = self.table
-        d = self.kind.dimension
-        return Prediction(
-            table.mean[:, :d].copy(),
-            table.covariance[:, :d, :d].copy(),
-            table.state.copy(),
-            frame.time - table.last_seen,
-            variance,
-        )
+        estimate, _, covariance = measured_part(table.mean, table.covariance, self.kind.dimension)
+        unseen = frame.time - table.last_seen
+        return Prediction(estimate, covariance, table.state.copy(), unseen, variance)
 
     def _weigh(self, tiers: tuple[TierDecision, ...]) -> None:
-        """Identity confidence: times 1 / (1 + exp(−margin)) for each decision about a track."""
         for tier in tiers:
-            self.table.log_confidence[tier.track] -= np.log1p(np.exp(-tier.solution.row_margin))
-
-    def _take_over(self, rows: Ints, taken: Ints, frame: Frame) -> None:
-        """Score and label of the detections go to their tracks; the first label stays."""
-        table = self.table
-        table.score[rows] = frame.score[taken]
-        unnamed = table.label[rows] < 0
-        if unnamed.any():
-            table.label[rows[unnamed]] = frame.label[taken[unnamed]]
+            weigh(self.table.log_confidence, tier.track, tier.solution.row_margin)
 
     def _give_birth(
-        self, frame: Frame, variance: Floats, pairing: Ints, taken: Ints
+        self, frame: Frame, variance: Floats, pairing: Ints
     ) -> tuple[list[Transitions], Ints]:
-        if len(taken) == len(frame):
-            return [], pairing
+        """Unpaired detections that are scored high enough become tentative tracks."""
         free = np.ones(len(frame), np.bool_)
-        free[taken] = False
+        free[pairing[pairing >= 0]] = False
         if self._birth_score is not None:
             free &= ~(frame.score < self._birth_score)  # a missing score does not stand in the way
         chosen = np.flatnonzero(free)
@@ -265,18 +244,20 @@ class Engine:
         prediction: Prediction | None,
     ) -> FrameResult:
         table = self.table
-        d = self.kind.dimension
+        estimate, rate, covariance = measured_part(
+            table.mean, table.covariance, self.kind.dimension
+        )
         return FrameResult(
             number=frame.number,
             time=frame.time,
             track=table.identity.copy(),
             state=table.state.copy(),
-            estimate=table.mean[:, :d].copy(),
-            rate=table.mean[:, d:].copy(),
-            covariance=table.covariance[:, :d, :d].copy(),
+            estimate=estimate,
+            rate=rate,
+            covariance=covariance,
             score=table.score.copy(),
             label=table.label.copy(),
-            confidence=np.exp(table.log_confidence),
+            confidence=np.exp(table.log_confidence) if self.explain else None,
             detection=pairing,
             transitions=_joined(transitions),
             tiers=tiers,
@@ -285,13 +266,19 @@ class Engine:
         )
 
 
+NO_TRANSITIONS = Transitions(
+    np.empty(0, np.int64), np.empty(0, np.int8), np.empty(0, np.int8), np.empty(0, np.int8)
+)
+
+
 def _joined(parts: list[Transitions]) -> Transitions:
-    filled = [part for part in parts if len(part.track)]
-    if len(filled) <= 1:
-        return filled[0] if filled else parts[0]
+    if not parts:
+        return NO_TRANSITIONS
+    if len(parts) == 1:
+        return parts[0]
     return Transitions(
-        np.concatenate([part.track for part in filled]),
-        np.concatenate([part.before for part in filled]),
-        np.concatenate([part.after for part in filled]),
-        np.concatenate([part.reason for part in filled]),
+        np.concatenate([part.track for part in parts]),
+        np.concatenate([part.before for part in parts]),
+        np.concatenate([part.after for part in parts]),
+        np.concatenate([part.reason for part in parts]),
     )

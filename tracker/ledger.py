@@ -19,6 +19,7 @@ from numpy.typing import NDArray
 from tracker.association import TierDecision
 from tracker.association.rule import association_rules
 from tracker.engine import FrameResult
+from tracker.kernels.assignment import problem_frontier
 from tracker.kernels.margin import force_costs
 from tracker.log.model import Frame, Kind
 from tracker.results.table import STATE_WORDS, label_words
@@ -72,7 +73,7 @@ class Ledger:
         contested[components.of_row[row_contested]] = True
         contested[components.of_column[column_contested]] = True
         whole = contested if self._level == "contested" else np.ones_like(contested)
-        force = force_costs(problem, components, answer, whole)
+        force = force_costs(problem, components, answer, whole, problem_frontier(problem))
 
         row = np.repeat(np.arange(len(problem.miss)), np.diff(problem.start))
         chosen = answer.row_candidate[row] == np.arange(len(row))

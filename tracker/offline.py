@@ -38,8 +38,8 @@ class ProofSummary:
         for tier in result.tiers:
             self.components += len(tier.solution.components.candidates)
             self.candidates += len(tier.problem.column)
-            self.largest_gap = max(self.largest_gap, abs(tier.gap))
-            self.largest_violation = max(self.largest_violation, tier.violation)
+            self.largest_gap = max(self.largest_gap, abs(tier.solution.gap))
+            self.largest_violation = max(self.largest_violation, tier.solution.violation)
 
 
 def frames_of(log: DetectionLog, settings: Settings) -> Iterator[Frame]:

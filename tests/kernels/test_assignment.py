@@ -8,7 +8,7 @@ from scipy.optimize import linear_sum_assignment
 
 from tests.kernels.problems import DEGENERATE, full, random_problems, sparse
 from tests.reference import assignment as twin
-from tracker.kernels.assignment import assign, certify
+from tracker.kernels.assignment import assign, certify, problem_frontier
 from tracker.kernels.components import label_components
 
 FAR = 1e4  # miss and new costs at which leaving anything unpaired never pays
@@ -18,7 +18,7 @@ def solved(allowed, cost, miss, new):
     """Solve, check the proof with kernel and twin, return (total, answer)."""
     problem = sparse(allowed, cost, miss, new)
     components = label_components(problem.start, problem.column, len(problem.new))
-    answer = assign(problem, components)
+    answer = assign(problem, components, problem_frontier(problem))
     paired = answer.row_candidate >= 0
     total = (
         problem.cost[answer.row_candidate[paired]].sum()
@@ -220,7 +220,7 @@ def test_certificate_catches_a_wrong_answer():
     allowed, cost, miss, new = full([[1.0, 5.0], [5.0, 1.0]], 10.0, 10.0)
     problem = sparse(allowed, cost, miss, new)
     components = label_components(problem.start, problem.column, 2)
-    answer = assign(problem, components)
+    answer = assign(problem, components, problem_frontier(problem))
     swapped = answer._replace(
         row_candidate=np.array([1, 2]), row_column=np.array([1, 0]), column_row=np.array([1, 0])
     )

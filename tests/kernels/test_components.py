@@ -5,7 +5,7 @@ import pytest
 
 from tests.kernels.problems import DEGENERATE, random_problems, sparse
 from tests.reference import components as twin
-from tracker.kernels.components import label_components
+from tracker.kernels.components import label_components, members
 
 CASES = [*DEGENERATE.values(), *random_problems(300, seed=21, largest=12)]
 
@@ -25,10 +25,8 @@ def test_same_components_as_networkx(chunk):
         expected = twin.label_components(len(miss), len(new), pairs)
         assert {frozenset(part) for part in parts} == expected
         for c in range(count):
-            rows = found.row[found.row_start[c] : found.row_start[c + 1]]
-            columns = found.column[found.column_start[c] : found.column_start[c + 1]]
-            assert rows.tolist() == np.flatnonzero(found.of_row == c).tolist()
-            assert columns.tolist() == np.flatnonzero(found.of_column == c).tolist()
+            assert found.rows[c] == (found.of_row == c).sum()
+            assert found.columns[c] == (found.of_column == c).sum()
             assert found.candidates[c] == sum(found.of_row[i] == c for i, _ in pairs)
 
 
@@ -37,3 +35,9 @@ def test_numbered_by_first_row_then_lone_columns():
     found = label_components(problem.start, problem.column, 3)
     assert found.of_row.tolist() == [0, 1]
     assert found.of_column.tolist() == [2, 3, 0]
+
+
+def test_members_by_label():
+    label = np.array([2, 0, 2, 1])
+    start, member = members(label, 4)
+    assert [member[start[k] : start[k + 1]].tolist() for k in range(4)] == twin.members(label, 4)

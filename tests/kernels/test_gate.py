@@ -7,9 +7,9 @@ from scipy.stats import chi2
 from tests.reference import gate as twin
 from tests.reference import grid as grid_twin
 from tracker.association.rule import gate_threshold
-from tracker.kernels import gate as kernel
+from tracker.kernels import grid as kernel
 from tracker.kernels.gate import GATE_NOT_POSITIVE, GATE_OK, GATE_TOO_MANY, gate_candidates
-from tracker.kernels.grid import build_grid, meeting, typical_extent
+from tracker.kernels.grid import meeting_pairs, typical_extent
 
 LIMIT = 10**6
 
@@ -32,13 +32,13 @@ def scene(seed, tracks, detections, d, spread=60.0):
 
 
 def found(problem, threshold, floor, boxes):
-    status, _, candidates = gate_candidates(*problem, threshold, floor, boxes, LIMIT)
+    status, _, candidates = gate_candidates(*problem, threshold, floor, boxes, True, LIMIT)
     assert status == GATE_OK
     rows = np.repeat(np.arange(len(problem[0])), np.diff(candidates.start))
     return rows, candidates
 
 
-@pytest.mark.parametrize(("tracks", "detections"), [(0, 5), (5, 0), (1, 1), (8, 11), (70, 60)])
+@pytest.mark.parametrize(("tracks", "detections"), [(0, 5), (5, 0), (1, 1), (8, 11), (70, 75)])
 @pytest.mark.parametrize(("d", "floor"), [(2, 0.0), (4, 0.0), (4, 0.2)])
 @pytest.mark.parametrize("probability", [0.9, 0.999, None])
 def test_same_candidates_as_the_twin(tracks, detections, d, floor, probability):
@@ -54,9 +54,9 @@ def test_same_candidates_as_the_twin(tracks, detections, d, floor, probability):
         np.testing.assert_allclose(getattr(candidates, name), values, rtol=1e-9, atol=1e-12)
 
 
-def test_grid_and_double_loop_agree_with_strays_and_giants(monkeypatch):
+def test_grid_with_strays_and_giants():
     """One detection far away, one huge gate: the grid must neither miss nor repeat a pair."""
-    mean, covariance, z, variance = scene(3, 60, 60, 2)
+    mean, covariance, z, variance = scene(3, 80, 80, 2)
     z[0] = 1e9
     covariance[1] *= 1e6
     variance[2] = 1e5
@@ -66,7 +66,7 @@ def test_grid_and_double_loop_agree_with_strays_and_giants(monkeypatch):
     rows, candidates = found(problem, threshold, 0.0, False)
     assert len(expected) > 100
     assert list(zip(rows, candidates.column, strict=True)) == expected
-    assert 60 * 60 > kernel.SMALL_PRODUCT  # the grid was in use
+    assert kernel.SMALL_PRODUCT < 80 * 80  # the grid was in use
 
 
 def test_all_at_one_place():
@@ -78,7 +78,7 @@ def test_all_at_one_place():
 
 def test_too_many_candidates_is_a_status():
     problem = scene(5, 40, 40, 2, spread=1.0)
-    status, row, candidates = gate_candidates(*problem, 1e6, 0.0, False, 100)
+    status, row, candidates = gate_candidates(*problem, 1e6, 0.0, False, True, 100)
     assert status == GATE_TOO_MANY
     assert row >= 0
     assert len(candidates.column) == 0
@@ -87,7 +87,7 @@ def test_too_many_candidates_is_a_status():
 def test_a_broken_covariance_is_a_status():
     mean, covariance, z, variance = scene(6, 1, 1, 2, spread=0.0)
     covariance[0] = -np.eye(4) * 100
-    status, row, _ = gate_candidates(mean, covariance, z, variance, np.inf, 0.0, False, LIMIT)
+    status, row, _ = gate_candidates(mean, covariance, z, variance, np.inf, 0.0, False, True, LIMIT)
     assert (status, row) == (GATE_NOT_POSITIVE, 0)
 
 
@@ -120,34 +120,44 @@ def test_the_gate_admits_its_probability():
 
 
 @pytest.mark.parametrize("seed", range(5))
-def test_meeting_rectangles(seed):
+@pytest.mark.parametrize("count", [20, 200])  # double loop, grid
+def test_meeting_rectangles(seed, count):
     rng = np.random.default_rng(seed)
-    low = rng.uniform(-50, 50, (200, 2))
-    high = low + rng.exponential(4.0, (200, 2)) * rng.choice([0.0, 1.0, 30.0], (200, 1))
-    cell = np.array([rng.uniform(0.5, 20.0), rng.uniform(0.5, 20.0)])
-    grid = build_grid(low, high, cell)
-    receives = np.empty(200, np.int64)
-    for k in range(200):
-        count = meeting(low[k], high[k], grid, receives)
-        assert receives[:count].tolist() == grid_twin.meeting(low[k], high[k], low, high)
+
+    def rectangles():
+        low = rng.uniform(-50, 50, (count, 2))
+        return low, low + rng.exponential(4.0, (count, 2)) * rng.choice(
+            [0.0, 1.0, 30.0], (count, 1)
+        )
+
+    (low, high), (other_low, other_high) = rectangles(), rectangles()
+    start, found = meeting_pairs(low, high, other_low, other_high, LIMIT)
+    lists = [found[start[k] : start[k + 1]].tolist() for k in range(count)]
+    assert lists == grid_twin.meeting_pairs(low, high, other_low, other_high)
 
 
-def test_grid_holds_each_rectangle_in_the_cells_it_touches():
-    rng = np.random.default_rng(9)
-    low = rng.uniform(0, 30, (50, 2))
-    high = low + rng.uniform(0, 3, (50, 2))
-    cell = np.array([3.0, 2.0])
-    grid = build_grid(low, high, cell)
-    cells = {}
-    for j, x, y in zip(grid.member, grid.cell_x, grid.cell_y, strict=True):
-        cells.setdefault((int(x), int(y)), []).append(int(j))
-    assert {key: sorted(value) for key, value in cells.items()} == grid_twin.build_grid(
-        low, high, cell
-    )
+def test_meeting_stops_at_the_limit():
+    low, high = np.zeros((100, 2)), np.ones((100, 2))
+    start, found = meeting_pairs(low, high, low, high, 250)
+    assert 250 <= len(found) < 100 * 100
+    assert start[-1] == len(found)
+
+
+def test_axes_that_are_not_coupled_give_the_same_bits():
+    mean, covariance, z, variance = scene(8, 60, 60, 4)
+    for a in range(8):
+        for b in range(8):
+            if a % 4 != b % 4:
+                covariance[:, a, b] = 0.0
+    general = gate_candidates(mean, covariance, z, variance, 20.0, 0.0, True, True, LIMIT)[2]
+    special = gate_candidates(mean, covariance, z, variance, 20.0, 0.0, True, False, LIMIT)[2]
+    assert len(general.column) > 10
+    for one, other in zip(general, special, strict=True):
+        assert (one == other).all()
 
 
 def test_typical_extent_is_the_median():
-    low = np.zeros((41, 2))
-    high = np.column_stack((np.arange(41.0), np.ones(41)))
-    assert typical_extent(low, high, 0) == grid_twin.typical_extent(low, high, 0) == 20.0
+    low = np.zeros((17, 2))
+    high = np.column_stack((np.random.default_rng(1).permutation(17), np.ones(17)))
+    assert typical_extent(low, high, 0) == grid_twin.typical_extent(low, high, 0) == 8.0
     assert typical_extent(low[:0], high[:0], 0) == 0.0

@@ -1,12 +1,13 @@
 """Lifecycle transitions against one-track-at-a-time words, and published initiation odds."""
 
 import itertools
+import math
 
 import numpy as np
 import pytest
 
 from tests.reference import lifecycle as twin
-from tracker.kernels.lifecycle import advance, expire
+from tracker.kernels.lifecycle import advance, expire, take_over, weigh
 from tracker.lifecycle.rules import Reason
 from tracker.results.tracks import TrackState
 
@@ -18,10 +19,18 @@ def history(pairings, confirm_hits, confirm_window):
     age = np.array([1])
     seen = np.array([0.0])
     out = []
+    confidence = np.array([-1.0])
     for k, paired in enumerate(pairings):
-        reason = advance(
-            state, hits, age, seen, np.array([paired]), k + 1.0, confirm_hits, confirm_window
+        was = state[0]
+        pairing = np.array([0 if paired else -1])
+        changed, before, reasons, ended = advance(
+            state, hits, age, seen, confidence, pairing, k + 1.0, confirm_hits, confirm_window
         )
+        assert len(changed) == len(before) == len(reasons)
+        assert (before == was).all()
+        assert ended == (state[0] == TrackState.ENDED)
+        reason = reasons if len(reasons) else [Reason.UNCHANGED]
+        assert confidence[0] == (0.0 if reason[0] == Reason.HITS_REACHED else confidence[0])
         out.append((TrackState(state[0]).word, Reason(reason[0]).words))
         if state[0] == TrackState.ENDED:
             break
@@ -61,5 +70,25 @@ def test_initiation_probability_is_the_binomial_sum(m, n, probability):
 def test_expiry_is_not_decided_by_rounding():
     seen = np.array([0.0, 0.1, 2.0 - 1e-9])
     now = 0.1 + 1.0
-    assert expire(np.zeros(3, np.int8), seen, now, 1.0).tolist() == [True, False, False]
+    late, count = expire(seen, now, 1.0)
+    assert late.tolist() == [True, False, False]
+    assert count == 1
     assert [twin.expire(value, now, 1.0) for value in seen] == [True, False, False]
+
+
+def test_take_over():
+    score, label = np.array([0.1, 0.2, 0.3]), np.array([-1, 4, -1], np.int32)
+    pairing = np.array([1, 0, -1])
+    seen_score, seen_label = np.array([0.8, 0.9]), np.array([5, 6], np.int32)
+    expected = twin.take_over(score, label, pairing, seen_score, seen_label)
+    assert take_over(score, label, pairing, seen_score, seen_label) == 2
+    assert (score.tolist(), label.tolist()) == expected == ([0.9, 0.8, 0.3], [6, 4, -1])
+
+
+def test_weigh_turns_margins_into_probabilities():
+    log_confidence = np.log([0.5, 1.0, 0.8])
+    rows, margin = np.array([0, 2, 1]), np.array([0.0, math.log(9.0), np.inf])
+    weigh(log_confidence, rows, margin)
+    expected = twin.weigh([0.5, 1.0, 0.8], rows, margin)
+    np.testing.assert_allclose(np.exp(log_confidence), expected, rtol=1e-12)
+    np.testing.assert_allclose(expected, [0.25, 1.0, 0.72], rtol=1e-12)  # by hand

@@ -5,7 +5,7 @@ import pytest
 
 from tests.kernels.problems import DEGENERATE, full, random_problems, sparse
 from tests.reference import margin as twin
-from tracker.kernels.assignment import assign
+from tracker.kernels.assignment import assign, problem_frontier
 from tracker.kernels.components import label_components
 from tracker.kernels.margin import force_costs, margins
 
@@ -13,11 +13,13 @@ from tracker.kernels.margin import force_costs, margins
 def check(allowed, cost, miss, new):
     problem = sparse(allowed, cost, miss, new)
     components = label_components(problem.start, problem.column, len(problem.new))
-    answer = assign(problem, components)
-    of_row, of_column = margins(problem, components, answer)
+    answer = assign(problem, components, problem_frontier(problem))
+    of_row, of_column = margins(problem, components, answer, problem_frontier(problem))
     wanted = np.ones(len(components.candidates), bool)
     forced = np.full(np.shape(allowed), np.nan)
-    forced[np.asarray(allowed)] = force_costs(problem, components, answer, wanted)
+    forced[np.asarray(allowed)] = force_costs(
+        problem, components, answer, wanted, problem_frontier(problem)
+    )
     expected = twin.margins(allowed, cost, miss, new, answer.row_column, answer.column_row)
     scale = 1.0 + np.abs(problem.cost).max(initial=0.0)
     np.testing.assert_allclose(of_row, expected[0], rtol=0, atol=1e-9 * scale)
@@ -73,7 +75,9 @@ def test_force_costs_only_where_wanted():
     allowed = np.eye(2, dtype=bool)
     problem = sparse(allowed, np.full((2, 2), 3.0), np.ones(2), np.ones(2))
     components = label_components(problem.start, problem.column, 2)
-    answer = assign(problem, components)
-    forced = force_costs(problem, components, answer, np.array([False, True]))
+    answer = assign(problem, components, problem_frontier(problem))
+    forced = force_costs(
+        problem, components, answer, np.array([False, True]), problem_frontier(problem)
+    )
     assert np.isnan(forced[0])
     assert forced[1] == pytest.approx(1.0)

@@ -24,16 +24,18 @@ def test_equals_shapely():
         x, y, w, h = box
         return shapely.box(x - w / 2, y - h / 2, x + w / 2, y + h / 2)
 
-    for a, b in zip(boxes(3), boxes(4), strict=True):
-        one, other = polygon(a), polygon(b)
+    a, b = boxes(3), boxes(4)
+    for k in range(len(a)):
+        one, other = polygon(a[k]), polygon(b[k])
         expected = one.intersection(other).area / one.union(other).area
-        assert box_overlap(a, b) == pytest.approx(expected, abs=1e-12)
+        assert box_overlap(a, k, b, k) == pytest.approx(expected, abs=1e-12)
 
 
 def test_edges_and_degenerate_boxes():
     unit = np.array([0.0, 0.0, 1.0, 1.0])
-    assert box_overlap(unit, unit) == 1.0
-    assert box_overlap(unit, unit + np.array([1.0, 0, 0, 0])) == 0.0  # they only touch
-    assert box_overlap(unit, np.array([0.0, 0.0, 0.0, 0.0])) == pytest.approx(0.0, abs=1e-17)
-    assert box_overlap(unit, np.array([0.0, 0.0, -3.0, 1.0])) == pytest.approx(0.0, abs=1e-8)
+    others = np.array(
+        [unit, [1.0, 0.0, 1.0, 1.0], [0.0, 0.0, 0.0, 0.0], [0.0, 0.0, -3.0, 1.0]]
+    )  # itself, one that only touches, one without size, one turned inside out
+    overlap = overlap_matrix(unit[None], others)[0]
+    np.testing.assert_allclose(overlap, [1.0, 0.0, 0.0, 0.0], atol=1e-8)
     assert overlap_matrix(np.empty((0, 4)), boxes(1)).shape == (0, 40)

@@ -10,3 +10,8 @@ def label_components(rows, columns, pairs):
     graph.add_nodes_from(("column", j) for j in range(columns))
     graph.add_edges_from((("row", i), ("column", j)) for i, j in pairs)
     return {frozenset(part) for part in nx.connected_components(graph)}
+
+
+def members(label, count):
+    """Indices of each label, as lists."""
+    return [[k for k, value in enumerate(label) if value == c] for c in range(count)]

@@ -1,5 +1,7 @@
 """Slow twins of kernels/lifecycle.py: one track at a time, states and reasons as words."""
 
+import math
+
 
 def expire(last_seen, now, coast_seconds):
     """Whether a track is past its coasting limit (to the microsecond)."""
@@ -19,3 +21,23 @@ def advance(state, hits, age, paired, confirm_hits, confirm_window):
     if paired:
         return "confirmed", hits, age, "found again" if state == "coasting" else "unchanged"
     return "coasting", hits, age, "missed" if state == "confirmed" else "unchanged"
+
+
+def take_over(score, label, pairing, detection_score, detection_label):
+    """(scores, labels) of the tracks after taking them over from their detections."""
+    new_score, new_label = list(score), list(label)
+    for i, j in enumerate(pairing):
+        if j >= 0:
+            new_score[i] = detection_score[j]
+            if new_label[i] < 0:
+                new_label[i] = detection_label[j]
+    return new_score, new_label
+
+
+def weigh(confidence, rows, margin):
+    """Confidences (not logs) times the odds of each decision as a probability."""
+    out = list(confidence)
+    for i, nats in zip(rows, margin, strict=True):
+        odds = math.exp(nats) if nats < 700 else math.inf
+        out[i] *= 1.0 if odds == math.inf else odds / (1.0 + odds)
+    return out

@@ -5,13 +5,14 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from tracker.association.cost import candidate_costs
 from tracker.association.rule import AssociationRule
 from tracker.errors import CertificateError, InputError, KernelError
 from tracker.kernels.assignment import Problem
 from tracker.kernels.gate import GATE_NOT_POSITIVE, GATE_TOO_MANY, Candidates, gate_candidates
-from tracker.kernels.solve import Solution, solve, worst_proof
+from tracker.kernels.solve import Solution, solve
 from tracker.lifecycle.table import TrackTable
 from tracker.log.model import Floats, Frame, Ints
 
@@ -19,25 +20,45 @@ from tracker.log.model import Floats, Frame, Ints
 PROOF_TOLERANCE = 1e-9
 
 
-@dataclass(frozen=True, slots=True, eq=False)
+@dataclass(slots=True, eq=False)
 class TierDecision:
     """What one tier saw and decided. Rows are tracks, columns are detections *of this tier*.
 
-    track : (n,) table rows that took part.   detection : (m,) detections that took part.
+    selected_tracks, selected_detections : which took part, None for all; `track` and `detection`
+    give the table rows and the numbers in the frame.
     terms : (T, E) cost terms, `problem.cost` is their sum plus −ln P_D.
-    gap, violation : the worst component's, relative to its scale; about 0.
     """
 
     tier: int
     rule: AssociationRule
-    track: Ints
-    detection: Ints
+    selected_tracks: Ints | None
+    selected_detections: Ints | None
     candidates: Candidates
     terms: Floats
     problem: Problem
     solution: Solution
-    gap: float
-    violation: float
+
+    @property
+    def track(self) -> Ints:
+        """(n,) table row of each row."""
+        if self.selected_tracks is not None:
+            return self.selected_tracks
+        return _numbers(len(self.problem.miss))
+
+    @property
+    def detection(self) -> Ints:
+        """(m,) number in the frame of each column."""
+        if self.selected_detections is not None:
+            return self.selected_detections
+        return _numbers(len(self.problem.new))
+
+
+_first_numbers = np.arange(1024)
+
+
+def _numbers(count: int) -> Ints:
+    """0, 1, … count − 1, without making them anew in every frame."""
+    return _first_numbers[:count] if count <= len(_first_numbers) else np.arange(count)
 
 
 def associate(
@@ -45,34 +66,41 @@ def associate(
     table: TrackTable,
     frame: Frame,
     variance: Floats,
+    coupled: bool,
     explain: bool,
 ) -> tuple[tuple[TierDecision, ...], Ints]:
     """Decide a frame.
 
+    coupled : whether the axes of the tracks' covariances may be correlated.
+    explain : whether margins are measured.
+
     Returns the tiers' decisions and the (n,) detection of each live track, -1 for none.
     Raises InputError for more candidates than the limit, CertificateError if a proof fails.
     """
+    if len(rules) == 1 and rules[0].everything:
+        decision = _decide(0, rules[0], table, frame, variance, None, None, coupled, explain)
+        return (decision,), decision.solution.answer.row_column
     pairing = np.full(len(table), -1, np.int64)
     decisions = []
     free = np.ones(len(frame), np.bool_)
     for k, rule in enumerate(rules):
-        tracks = detections = None
-        if not (rule.everything and k == 0):
-            tracks = np.flatnonzero((pairing < 0) & ((rule.states >> table.state) & 1).astype(bool))
-            score = np.where(np.isnan(frame.score), np.inf, frame.score)
-            wanted = free & (score >= rule.score_from)
-            if np.isfinite(rule.score_below):
-                wanted &= score < rule.score_below
-            detections = np.flatnonzero(wanted)
-        decision = _decide(k, rule, table, frame, variance, tracks, detections, explain)
+        tracks = np.flatnonzero((pairing < 0) & ((rule.states >> table.state) & 1).astype(bool))
+        detections = np.flatnonzero(free & _scored_inside(frame.score, rule))
+        decision = _decide(k, rule, table, frame, variance, tracks, detections, coupled, explain)
         decisions.append(decision)
         column = decision.solution.answer.row_column
-        if tracks is None:
-            pairing = column
-        else:
-            pairing[tracks] = np.where(column >= 0, decision.detection[column], -1)
+        pairing[tracks] = np.where(column >= 0, detections[column], -1) if len(detections) else -1
         free[pairing[pairing >= 0]] = False
     return tuple(decisions), pairing
+
+
+def _scored_inside(score: Floats, rule: AssociationRule) -> NDArray[np.bool_]:
+    """Detections in the tier's range of scores; one without a score is as good as any."""
+    known = np.where(np.isnan(score), np.inf, score)
+    inside = known >= rule.score_from
+    if np.isfinite(rule.score_below):
+        inside &= known < rule.score_below
+    return inside
 
 
 def _decide(
@@ -83,6 +111,7 @@ def _decide(
     variance: Floats,
     tracks: Ints | None,
     detections: Ints | None,
+    coupled: bool,
     explain: bool,
 ) -> TierDecision:
     mean, covariance, z = table.mean, table.covariance, frame.z
@@ -98,6 +127,7 @@ def _decide(
         rule.threshold,
         rule.overlap_floor,
         rule.boxes,
+        coupled,
         rule.candidate_limit,
     )
     if status == GATE_TOO_MANY:
@@ -121,23 +151,20 @@ def _decide(
         np.zeros(len(z)),
     )
     solution = solve(problem, explain)
-    component, gap, violation = worst_proof(solution.certificate)
-    if not max(abs(gap), violation) <= PROOF_TOLERANCE:
+    if not max(abs(solution.gap), solution.violation) <= PROOF_TOLERANCE:
         raise CertificateError(
-            f"component {component} of tier '{rule.name}' is not proved optimal",
+            f"component {solution.weakest} of tier '{rule.name}' is not proved optimal",
             frame=frame.number,
-            gap=gap,
-            violation=violation,
+            gap=solution.gap,
+            violation=solution.violation,
         )
     return TierDecision(
         tier,
         rule,
-        np.arange(len(mean)) if tracks is None else tracks,
-        np.arange(len(z)) if detections is None else detections,
+        tracks,
+        detections,
         candidates,
         terms,
         problem,
         solution,
-        gap,
-        violation,
     )

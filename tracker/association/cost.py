@@ -15,6 +15,9 @@ from tracker.log.model import Floats
 
 def candidate_costs(rule: AssociationRule, candidates: Candidates) -> tuple[Floats, Floats]:
     """(T, E) terms in the order of ``rule.terms``, and (E,) their sum plus −ln P_D, in nats."""
+    if len(rule.terms) == 1:
+        term = _term(rule.terms[0], rule, candidates)
+        return term[np.newaxis], term + rule.paid
     terms = np.empty((len(rule.terms), len(candidates.column)))
     for k, name in enumerate(rule.terms):
         terms[k] = _term(name, rule, candidates)

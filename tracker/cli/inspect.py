@@ -72,7 +72,7 @@ def inspect(
             )
             summaries.append({})
     if json_:
-        typer.echo(json.dumps({"logs": summaries}, indent=2, ensure_ascii=False))
+        typer.echo(json.dumps({"logs": summaries}, indent=2, ensure_ascii=not unicode))
     for failure in failures:
         typer.echo(f"margent: {failure}", err=True)
     if failures:

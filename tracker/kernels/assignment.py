@@ -125,8 +125,16 @@ def _move_prices(row: int, best: float, answer: Assignment, frontier: Frontier) 
 
 
 @njit(cache=True)
-def assign(problem: Problem, components: Components) -> Assignment:
+def problem_frontier(problem: Problem) -> Frontier:
+    """Scratch for the searches that a problem needs."""
+    return new_frontier(len(problem.new), len(problem.column) + len(problem.new))
+
+
+@njit(cache=True)
+def assign(problem: Problem, components: Components, frontier: Frontier) -> Assignment:
     """Solve the optional assignment problem exactly.
+
+    frontier : scratch of `problem_frontier`, clear before and after.
 
     Rows enter in order and equal distances are settled by the lower column, so the answer
     depends on nothing but the component it is in.
@@ -145,7 +153,6 @@ def assign(problem: Problem, components: Components) -> Assignment:
         np.zeros(rows),
         np.zeros(columns),
     )
-    frontier = new_frontier(columns, len(column))
     for i in range(rows):
         # Most rows: the cheapest candidate leads to a free column, or nothing beats the miss.
         best = 0.0
@@ -165,11 +172,7 @@ def assign(problem: Problem, components: Components) -> Assignment:
             answer.row_price[i] = best
             continue
         c = components.of_row[i]
-        use_heap = prefers_heap(
-            components.row_start[c + 1] - components.row_start[c],
-            components.column_start[c + 1] - components.column_start[c],
-            components.candidates[c],
-        )
+        use_heap = prefers_heap(components.rows[c], components.columns[c], components.candidates[c])
         _augment(i, problem, reduced, answer, frontier, use_heap)
     for i in range(rows):
         answer.row_price[i] += problem.miss[i]

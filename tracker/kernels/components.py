@@ -14,11 +14,9 @@ class Components(NamedTuple):
 
     of_row: NDArray[np.int64]  # (n,) component of each row
     of_column: NDArray[np.int64]  # (m,) component of each column
-    row_start: NDArray[np.int64]  # (C + 1,) first member of each component in `row`
-    row: NDArray[np.int64]  # (n,) rows by component, increasing within one
-    column_start: NDArray[np.int64]  # (C + 1,) likewise
-    column: NDArray[np.int64]  # (m,)
-    candidates: NDArray[np.int64]  # (C,) how many candidates each has
+    rows: NDArray[np.int64]  # (C,) how many rows each has
+    columns: NDArray[np.int64]  # (C,) how many columns
+    candidates: NDArray[np.int64]  # (C,) how many candidates
 
 
 @njit(cache=True)
@@ -31,8 +29,8 @@ def _root(parent: NDArray[np.int64], node: int) -> int:
 
 
 @njit(cache=True)
-def _members(label: NDArray[np.int64], count: int) -> tuple[NDArray, NDArray]:
-    """Group indices by label: (count + 1,) starts, and the indices."""
+def members(label: NDArray[np.int64], count: int) -> tuple[NDArray, NDArray]:
+    """Group indices by label: (count + 1,) starts, and the indices, increasing within a label."""
     start = np.zeros(count + 1, np.int64)
     for k in range(len(label)):
         start[label[k] + 1] += 1
@@ -80,8 +78,11 @@ def label_components(
         else:
             of_column[node - rows] = label[root]
     candidates = np.zeros(count, np.int64)
+    row_count = np.zeros(count, np.int64)
+    column_count = np.zeros(count, np.int64)
     for i in range(rows):
+        row_count[of_row[i]] += 1
         candidates[of_row[i]] += start[i + 1] - start[i]
-    row_start, row = _members(of_row, count)
-    column_start, column_member = _members(of_column, count)
-    return Components(of_row, of_column, row_start, row, column_start, column_member, candidates)
+    for j in range(columns):
+        column_count[of_column[j]] += 1
+    return Components(of_row, of_column, row_count, column_count, candidates)

@@ -8,12 +8,9 @@ import numpy as np
 from numba import njit
 from numpy.typing import NDArray
 
-from tracker.kernels.grid import build_grid, meeting, typical_extent
+from tracker.kernels.grid import meeting_pairs
 from tracker.kernels.kalman import squared_mahalanobis
 from tracker.kernels.overlap import SMALLEST_SIZE, box_overlap
-
-# Up to this many pairs a plain double loop is faster than building a grid.
-SMALL_PRODUCT = 1024
 
 GATE_OK = 0
 GATE_TOO_MANY = 1  # more candidates than the limit
@@ -39,6 +36,7 @@ def gate_candidates(
     threshold: float,
     overlap_floor: float,
     boxes: bool,
+    coupled: bool,
     limit: int,
 ) -> tuple[int, int, Candidates]:
     """Find all pairs with d² ≤ threshold and IoU ≥ overlap_floor.
@@ -48,7 +46,8 @@ def gate_candidates(
     mean, covariance : (n, s), (n, s, s) predicted states, measured components first.
     z, variance : (m, d) detections and their measurement variances (diagonal R).
     threshold : gate on d², inf for none.   overlap_floor : IoU above 0, or 0 for none.
-    boxes : whether components are (cx, cy, w, h).   limit : most candidates.
+    boxes : whether components are (cx, cy, w, h).   coupled : whether axes may be correlated.
+    limit : most candidates.
 
     Returns
     -------
@@ -58,64 +57,38 @@ def gate_candidates(
     extents √(γ P_kk) and √(γ R_kk), since |Δ_k| ≤ √(γ (P_kk + R_kk)); or the boxes themselves
     where an overlap is required.
     """
-    tracks = len(mean)
-    detections = len(z)
     low, high = _rectangles(mean, covariance, threshold, overlap_floor)
     other_low, other_high = _detection_rectangles(z, variance, threshold, overlap_floor)
-    use_grid = tracks * detections > SMALL_PRODUCT
-    cell = np.ones(2)
-    for k in range(2):
-        reach = typical_extent(low, high, k) + typical_extent(other_low, other_high, k)
-        cell[k] = reach if 0.0 < reach < np.inf else 1.0
-    use_grid = use_grid and (threshold < np.inf or overlap_floor > 0.0)
-    grid = build_grid(other_low if use_grid else other_low[:0], other_high, cell)
+    near_start, near = meeting_pairs(low, high, other_low, other_high, 8 * limit)
     d = z.shape[1]
-    scratch = np.empty((d + 1, d))
-    start = np.zeros(tracks + 1, np.int64)
-    capacity = max(16, 4 * max(tracks, detections))
-    column = np.empty(capacity, np.int64)
-    distance = np.empty(capacity)
-    log_volume = np.empty(capacity)
-    overlap = np.empty(capacity)
-    found = np.empty(detections, np.int64)
+    scratch = np.empty((d + 2, d))
+    start = np.zeros(len(mean) + 1, np.int64)
+    column = np.empty(len(near), np.int64)
+    distance = np.empty(len(near))
+    log_volume = np.empty(len(near))
+    overlap = np.empty(len(near))
     count = 0
-    for i in range(tracks):
-        near = detections
-        if use_grid:
-            near = meeting(low[i], high[i], grid, found)
-        for k in range(near):
-            j = k
-            if use_grid:
-                j = found[k]
-            elif (
-                other_low[j, 0] > high[i, 0]
-                or other_high[j, 0] < low[i, 0]
-                or other_low[j, 1] > high[i, 1]
-                or other_high[j, 1] < low[i, 1]
-            ):
-                continue
-            shared = box_overlap(mean[i], z[j]) if boxes else 0.0
+    for i in range(len(mean)):
+        for k in range(near_start[i], near_start[i + 1]):
+            j = near[k]
+            shared = box_overlap(mean, i, z, j) if boxes else 0.0
             if shared < overlap_floor:
                 continue
-            d2, log_det = squared_mahalanobis(mean[i], covariance[i], z[j], variance[j], scratch)
+            d2, log_det = squared_mahalanobis(mean, covariance, i, z, variance, j, scratch, coupled)
             if not d2 < np.inf:
-                return GATE_NOT_POSITIVE, i, _no_candidates(tracks)
+                return GATE_NOT_POSITIVE, i, _no_candidates(len(mean))
             if d2 > threshold:
                 continue
             if count == limit:
-                return GATE_TOO_MANY, i, _no_candidates(tracks)
-            if count == capacity:
-                capacity *= 2
-                column = _grown(column, capacity)
-                distance = _grown(distance, capacity)
-                log_volume = _grown(log_volume, capacity)
-                overlap = _grown(overlap, capacity)
+                return GATE_TOO_MANY, i, _no_candidates(len(mean))
             column[count] = j
             distance[count] = d2
             log_volume[count] = log_det
             overlap[count] = shared
             count += 1
         start[i + 1] = count
+    if len(near) >= 8 * limit:
+        return GATE_TOO_MANY, -1, _no_candidates(len(mean))
     return (
         GATE_OK,
         -1,
@@ -132,10 +105,9 @@ def _no_candidates(tracks: int) -> Candidates:
 
 
 @njit(cache=True)
-def _grown(values: NDArray, capacity: int) -> NDArray:
-    larger = np.empty(capacity, values.dtype)
-    larger[: len(values)] = values
-    return larger
+def _half_extent(threshold: float, variance: float) -> float:
+    """√(γ P_kk); a variance that is none leaves the pair to the test that reports it."""
+    return np.sqrt(threshold * variance) if variance >= 0.0 else np.inf
 
 
 @njit(cache=True)
@@ -147,7 +119,7 @@ def _rectangles(
     high = np.empty((len(mean), 2))
     for i in range(len(mean)):
         for k in range(2):
-            half = np.sqrt(threshold * covariance[i, k, k])
+            half = _half_extent(threshold, covariance[i, k, k])
             if overlap_floor > 0.0:
                 half = 0.5 * max(mean[i, 2 + k], SMALLEST_SIZE)
             low[i, k] = mean[i, k] - half
@@ -164,7 +136,7 @@ def _detection_rectangles(
     high = np.empty((len(z), 2))
     for j in range(len(z)):
         for k in range(2):
-            half = np.sqrt(threshold * variance[j, k])
+            half = _half_extent(threshold, variance[j, k])
             if overlap_floor > 0.0:
                 half = 0.5 * max(z[j, 2 + k], SMALLEST_SIZE)
             low[j, k] = z[j, k] - half

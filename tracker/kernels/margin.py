@@ -26,8 +26,8 @@ from numba import njit
 from numpy.typing import NDArray
 
 from tracker.kernels.assignment import Assignment, Problem
-from tracker.kernels.components import Components
-from tracker.kernels.frontier import Frontier, clear, nearest, new_frontier, offer, prefers_heap
+from tracker.kernels.components import Components, members
+from tracker.kernels.frontier import Frontier, clear, nearest, offer, prefers_heap
 
 
 @njit(cache=True)
@@ -53,24 +53,23 @@ def _offer_candidates(
 
 @njit(cache=True)
 def _from_hub(
-    component: int,
+    rows: NDArray[np.int64],
+    columns: NDArray[np.int64],
     problem: Problem,
-    components: Components,
     answer: Assignment,
     frontier: Frontier,
     use_heap: bool,
     hub_distance: NDArray[np.float64],
 ) -> None:
-    """Distance from the hub to every column of a component, written into `hub_distance`."""
-    first = components.column_start[component]
-    last = components.column_start[component + 1]
-    for k in range(first, last):
-        j = components.column[k]
+    """Distance from the hub to every column of a component, written into `hub_distance`.
+
+    rows, columns : the component's.
+    """
+    for j in columns:
         if answer.column_row[j] >= 0:
             leave = max(0.0, problem.new[j] - answer.column_price[j])
             offer(frontier, j, leave, -1, -1, use_heap)
-    for k in range(components.row_start[component], components.row_start[component + 1]):
-        i = components.row[k]
+    for i in rows:
         if answer.row_candidate[i] < 0:
             _offer_candidates(i, 0.0, np.inf, problem, answer, frontier, use_heap)
     while True:
@@ -81,8 +80,8 @@ def _from_hub(
         i = answer.column_row[j]
         if i >= 0:
             _offer_candidates(i, frontier.distance[j], np.inf, problem, answer, frontier, use_heap)
-    for k in range(first, last):
-        hub_distance[components.column[k]] = frontier.distance[components.column[k]]
+    for j in columns:
+        hub_distance[j] = frontier.distance[j]
     clear(frontier)
 
 
@@ -126,9 +125,11 @@ def _from_row(
 
 @njit(cache=True)
 def margins(
-    problem: Problem, components: Components, answer: Assignment
+    problem: Problem, components: Components, answer: Assignment, frontier: Frontier
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     """Exact margin of every decision.
+
+    frontier : scratch of `problem_frontier`, clear before and after.
 
     Returns
     -------
@@ -138,27 +139,26 @@ def margins(
     row_margin = np.full(len(problem.miss), np.inf)
     column_margin = np.full(len(problem.new), np.inf)
     hub_distance = np.empty(len(problem.new))
-    frontier = new_frontier(len(problem.new), len(problem.column) + len(problem.new))
-    for c in range(len(components.candidates)):
+    count = len(components.candidates)
+    row_start, row = members(components.of_row, count)
+    column_start, column = members(components.of_column, count)
+    for c in range(count):
         if components.candidates[c] == 0:
             continue
-        first = components.row_start[c]
-        last = components.row_start[c + 1]
         if components.candidates[c] == 1:
-            _lone_candidate(components.row[first], problem, answer, row_margin, column_margin)
+            _lone_candidate(row[row_start[c]], problem, row_margin, column_margin)
             continue
-        columns = components.column_start[c + 1] - components.column_start[c]
-        use_heap = prefers_heap(last - first, columns, components.candidates[c])
-        _from_hub(c, problem, components, answer, frontier, use_heap, hub_distance)
-        for k in range(first, last):
-            i = components.row[k]
+        use_heap = prefers_heap(components.rows[c], components.columns[c], components.candidates[c])
+        rows = row[row_start[c] : row_start[c + 1]]
+        columns = column[column_start[c] : column_start[c + 1]]
+        _from_hub(rows, columns, problem, answer, frontier, use_heap, hub_distance)
+        for i in rows:
             j = answer.row_column[i]
             onward = hub_distance[j] if j >= 0 else 0.0
             row_margin[i] = _from_row(i, j, problem, answer, frontier, use_heap, onward)
             if j >= 0:
                 column_margin[j] = row_margin[i]
-        for k in range(components.column_start[c], components.column_start[c + 1]):
-            j = components.column[k]
+        for j in columns:
             if answer.column_row[j] < 0:
                 column_margin[j] = hub_distance[j]
     return row_margin, column_margin
@@ -168,7 +168,6 @@ def margins(
 def _lone_candidate(
     row: int,
     problem: Problem,
-    answer: Assignment,
     row_margin: NDArray[np.float64],
     column_margin: NDArray[np.float64],
 ) -> None:
@@ -183,13 +182,7 @@ def _lone_candidate(
 
 @njit(cache=True)
 def _spread(
-    row: int,
-    problem: Problem,
-    components: Components,
-    answer: Assignment,
-    frontier: Frontier,
-    use_heap: bool,
-    hub_distance: NDArray[np.float64],
+    row: int, problem: Problem, answer: Assignment, frontier: Frontier, use_heap: bool
 ) -> float:
     """Distances from a paired row to all columns, left in `frontier`; returns that to the hub."""
     to_hub = max(0.0, problem.miss[row] - answer.row_price[row])
@@ -215,42 +208,41 @@ def force_costs(
     components: Components,
     answer: Assignment,
     wanted: NDArray[np.bool_],
+    frontier: Frontier,
 ) -> NDArray[np.float64]:
     """Exact force cost of every unchosen candidate.
 
-    wanted : (C,) for which components; the others stay nan.
+    wanted : (C,) for which components; the others stay nan.   frontier : as in `margins`.
 
     Returns (E,) nats; 0 for chosen candidates.
     """
     force = np.full(len(problem.column), np.nan)
     hub_distance = np.empty(len(problem.new))
-    frontier = new_frontier(len(problem.new), len(problem.column) + len(problem.new))
-    for c in range(len(components.candidates)):
+    count = len(components.candidates)
+    row_start, row = members(components.of_row, count)
+    column_start, column = members(components.of_column, count)
+    for c in range(count):
         if not wanted[c] or components.candidates[c] == 0:
             continue
-        first = components.row_start[c]
-        last = components.row_start[c + 1]
-        columns = components.column_start[c + 1] - components.column_start[c]
-        use_heap = prefers_heap(last - first, columns, components.candidates[c])
-        _from_hub(c, problem, components, answer, frontier, use_heap, hub_distance)
-        by_column_start, by_column = _by_column(c, problem, components)
-        for k in range(columns):
-            j = components.column[components.column_start[c] + k]
+        use_heap = prefers_heap(components.rows[c], components.columns[c], components.candidates[c])
+        rows = row[row_start[c] : row_start[c + 1]]
+        columns = column[column_start[c] : column_start[c + 1]]
+        _from_hub(rows, columns, problem, answer, frontier, use_heap, hub_distance)
+        start, entry = _by_column(rows, columns, components.candidates[c], problem)
+        for k in range(len(columns)):
+            j = columns[k]
             holder = answer.column_row[j]
             to_hub = 0.0
-            if holder >= 0 and by_column_start[k + 1] - by_column_start[k] > 1:
-                to_hub = _spread(
-                    holder, problem, components, answer, frontier, use_heap, hub_distance
-                )
-            for at in range(by_column_start[k], by_column_start[k + 1]):
-                i = by_column[at, 0]
-                e = by_column[at, 1]
+            if holder >= 0 and start[k + 1] - start[k] > 1:
+                to_hub = _spread(holder, problem, answer, frontier, use_heap)
+            for at in range(start[k], start[k + 1]):
+                i = entry[at, 0]
+                e = entry[at, 1]
                 if e == answer.row_candidate[i]:
                     force[e] = 0.0
                     continue
                 left = answer.row_column[i]
-                onward = hub_distance[left] if left >= 0 else 0.0
-                way = to_hub + onward
+                way = to_hub + (hub_distance[left] if left >= 0 else 0.0)
                 if holder >= 0 and left >= 0:
                     way = min(way, frontier.distance[left])
                 reduced = problem.cost[e] - answer.row_price[i] - answer.column_price[j]
@@ -261,25 +253,20 @@ def force_costs(
 
 @njit(cache=True)
 def _by_column(
-    component: int, problem: Problem, components: Components
+    rows: NDArray[np.int64], columns: NDArray[np.int64], candidates: int, problem: Problem
 ) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
-    """A component's candidates grouped by column: starts, and (row, candidate) of each."""
-    first = components.column_start[component]
-    columns = components.column_start[component + 1] - first
-    members = components.column[first : first + columns]  # increasing
-    start = np.zeros(columns + 1, np.int64)
-    for k in range(components.row_start[component], components.row_start[component + 1]):
-        i = components.row[k]
+    """A component's candidates grouped by its columns: starts, and (row, candidate) of each."""
+    start = np.zeros(len(columns) + 1, np.int64)
+    for i in rows:
         for e in range(problem.start[i], problem.start[i + 1]):
-            start[np.searchsorted(members, problem.column[e]) + 1] += 1
-    for k in range(columns):
+            start[np.searchsorted(columns, problem.column[e]) + 1] += 1
+    for k in range(len(columns)):
         start[k + 1] += start[k]
-    fill = start[:columns].copy()
-    entry = np.empty((components.candidates[component], 2), np.int64)
-    for k in range(components.row_start[component], components.row_start[component + 1]):
-        i = components.row[k]
+    fill = start[: len(columns)].copy()
+    entry = np.empty((candidates, 2), np.int64)
+    for i in rows:
         for e in range(problem.start[i], problem.start[i + 1]):
-            at = np.searchsorted(members, problem.column[e])
+            at = np.searchsorted(columns, problem.column[e])
             entry[fill[at], 0] = i
             entry[fill[at], 1] = e
             fill[at] += 1

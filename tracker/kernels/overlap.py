@@ -11,14 +11,18 @@ SMALLEST_SIZE = 1e-9
 
 
 @njit(cache=True)
-def box_overlap(a: NDArray[np.float64], b: NDArray[np.float64]) -> float:
-    """IoU in [0, 1] of two boxes (cx, cy, w, h)."""
-    aw = max(a[2], SMALLEST_SIZE)
-    ah = max(a[3], SMALLEST_SIZE)
-    bw = max(b[2], SMALLEST_SIZE)
-    bh = max(b[3], SMALLEST_SIZE)
-    width = min(a[0] + 0.5 * aw, b[0] + 0.5 * bw) - max(a[0] - 0.5 * aw, b[0] - 0.5 * bw)
-    height = min(a[1] + 0.5 * ah, b[1] + 0.5 * bh) - max(a[1] - 0.5 * ah, b[1] - 0.5 * bh)
+def box_overlap(a: NDArray[np.float64], i: int, b: NDArray[np.float64], j: int) -> float:
+    """IoU in [0, 1] of boxes a[i] and b[j], both (cx, cy, w, h, …)."""
+    aw = max(a[i, 2], SMALLEST_SIZE)
+    ah = max(a[i, 3], SMALLEST_SIZE)
+    bw = max(b[j, 2], SMALLEST_SIZE)
+    bh = max(b[j, 3], SMALLEST_SIZE)
+    width = min(a[i, 0] + 0.5 * aw, b[j, 0] + 0.5 * bw) - max(
+        a[i, 0] - 0.5 * aw, b[j, 0] - 0.5 * bw
+    )
+    height = min(a[i, 1] + 0.5 * ah, b[j, 1] + 0.5 * bh) - max(
+        a[i, 1] - 0.5 * ah, b[j, 1] - 0.5 * bh
+    )
     if width <= 0.0 or height <= 0.0:
         return 0.0
     shared = width * height
@@ -31,5 +35,5 @@ def overlap_matrix(a: NDArray[np.float64], b: NDArray[np.float64]) -> NDArray[np
     out = np.empty((len(a), len(b)))
     for i in range(len(a)):
         for j in range(len(b)):
-            out[i, j] = box_overlap(a[i], b[j])
+            out[i, j] = box_overlap(a, i, b, j)
     return out

@@ -8,7 +8,14 @@ import numpy as np
 from numba import njit
 from numpy.typing import NDArray
 
-from tracker.kernels.assignment import Assignment, Certificate, Problem, assign, certify
+from tracker.kernels.assignment import (
+    Assignment,
+    Certificate,
+    Problem,
+    assign,
+    certify,
+    problem_frontier,
+)
 from tracker.kernels.components import Components, label_components
 from tracker.kernels.margin import margins
 
@@ -18,23 +25,11 @@ class Solution(NamedTuple):
 
     components: Components
     answer: Assignment
-    certificate: Certificate
     row_margin: NDArray[np.float64]  # (n,) nan where margins were not asked for
     column_margin: NDArray[np.float64]  # (m,)
-
-
-@njit(cache=True)
-def solve(problem: Problem, want_margins: bool) -> Solution:
-    """Solve one optional assignment problem, prove it, and measure its margins if wanted."""
-    components = label_components(problem.start, problem.column, len(problem.new))
-    answer = assign(problem, components)
-    certificate = certify(problem, components, answer)
-    if want_margins:
-        row_margin, column_margin = margins(problem, components, answer)
-    else:
-        row_margin = np.full(len(problem.miss), np.nan)
-        column_margin = np.full(len(problem.new), np.nan)
-    return Solution(components, answer, certificate, row_margin, column_margin)
+    weakest: int  # component whose proof is worst relative to its scale, -1 in an empty frame
+    gap: float  # its gap …
+    violation: float  # … and its violation of feasibility, relative to its scale
 
 
 @njit(cache=True)
@@ -56,3 +51,18 @@ def worst_proof(certificate: Certificate) -> tuple[int, float, float]:
             gap = certificate.gap[c] / scale
             violation = certificate.violation[c] / scale
     return worst, gap, violation
+
+
+@njit(cache=True)
+def solve(problem: Problem, want_margins: bool) -> Solution:
+    """Solve one optional assignment problem, prove it, and measure its margins if wanted."""
+    components = label_components(problem.start, problem.column, len(problem.new))
+    frontier = problem_frontier(problem)
+    answer = assign(problem, components, frontier)
+    weakest, gap, violation = worst_proof(certify(problem, components, answer))
+    if want_margins:
+        row_margin, column_margin = margins(problem, components, answer, frontier)
+    else:
+        row_margin = np.full(len(problem.miss), np.nan)
+        column_margin = np.full(len(problem.new), np.nan)
+    return Solution(components, answer, row_margin, column_margin, weakest, gap, violation)

@@ -31,7 +31,7 @@ def sample_rows(source: Source) -> tuple[list[list[str]], str]:
     header = find_header(source.data)
     if header is None:
         return [], ","
-    lines = source.data[:_SAMPLE_BYTES].decode("utf-8", "replace").splitlines()
+    lines = source.data[:_SAMPLE_BYTES].decode("utf-8", "replace").split("\n")
     lines = [line for line in lines if line.strip() and not line.lstrip().startswith("#")]
     return [split(line, header.delimiter) for line in lines[:_SAMPLE_ROWS]], header.delimiter
 

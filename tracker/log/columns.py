@@ -148,12 +148,6 @@ def choose_columns(
 
     Raises InputError when the columns do not make a log, truth or track file.
     """
-    twice = [name for name in dict.fromkeys(names) if [*names].count(name) > 1 and name]
-    if twice:
-        raise InputError(
-            "two columns have the same name", path=path, line=line, found=twice[0],
-            remedy="Rename one of them.",
-        )  # fmt: skip
     found = rename(names, mapping, role=role, path=path, line=line)
     kind = _kind_of(found)
     if kind is None or not ("frame" in found or "time" in found):
@@ -164,6 +158,15 @@ def choose_columns(
     chosen_numbers = {name: found[name] for name in numbers if name in found}
     chosen_words = {name: found[name] for name in _OPTIONAL_WORDS[role] if name in found}
     used = {*chosen_numbers.values(), *chosen_words.values()}
+    twice = [name for name in used if [*names].count(name) > 1]
+    if twice:
+        raise InputError(
+            "two columns have the same name",
+            path=path,
+            line=line,
+            found=min(twice),
+            remedy="Rename one of them.",
+        )
     ignored = [name for name in names if name not in used]
     have = {*chosen_numbers, *chosen_words}
     return Choice(kind, chosen_numbers, chosen_words, tuple(_ignored(ignored, have, role)))

@@ -2,13 +2,12 @@
 
 Two ways through a file. The fast one lets Arrow parse typed columns and only counts lines. If
 anything is out of the ordinary the careful one finds each row's place first, refuses rows of
-the wrong length, and reads numbers as text where a cell is none.
+the wrong length, and reads numbers as text where some cell is none.
 """
 
 from __future__ import annotations
 
 import csv
-import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
@@ -112,7 +111,10 @@ def split(line: str, delimiter: str) -> list[str]:
     """One line's cells; an unclosed quotation mark ends with the line."""
     if delimiter == " ":
         return line.split()
-    return next(csv.reader([line], delimiter=delimiter), [])
+    try:
+        return next(csv.reader([line], delimiter=delimiter), [])
+    except csv.Error:  # a cell beyond the csv module's limit of 131,072 characters
+        return line.split(delimiter)
 
 
 def is_number(cell: str) -> bool:
@@ -140,8 +142,10 @@ class Body:
         """The rows; where blanks separate, one blank between cells and none at the ends."""
         data = self.source.data[self.offset :] if self.offset else self.source.data
         if self.delimiter == " ":
-            data = re.sub(rb"[ \t\r]+", b" ", data)
-            data = re.sub(rb"(?m)^ | $", b"", data)
+            data = data.translate(bytes.maketrans(b"\t\r", b"  "))
+            while b"  " in data:
+                data = data.replace(b"  ", b" ")
+            data = data.replace(b" \n", b"\n").replace(b"\n ", b"\n").strip(b" ")
         return data
 
     @cached_property
@@ -164,7 +168,7 @@ class Body:
         """A comma where semicolons separate, some number has a comma and none has a point."""
         if self.delimiter != ";":
             return "."
-        sample = self.data[:_BLOCK].decode("utf-8", "replace").splitlines()[:_SAMPLE_ROWS]
+        sample = self.data[:_BLOCK].decode("utf-8", "replace").split("\n")[:_SAMPLE_ROWS]
         cells = [split(line, ";") for line in sample]
         numbers = [
             row[field]
@@ -187,6 +191,9 @@ def read_body(body: Body, *, format: str, kind: Kind, notes: Sequence[str] = ())
         line = np.arange(1, count + 1, dtype=np.int64) + body.lines_before
         return Table(format, kind, numbers, words, line, body.text, notes=tuple(notes))
     rows = body.rows
+    if rows.comments:
+        lines = "1 comment line" if rows.comments == 1 else f"{rows.comments} comment lines"
+        notes.append(f"{lines} (beginning with '#') left out")
     right = rows.fields == body.width
     refused = tuple(
         Rejection(int(line) + body.lines_before, "", _wrong_length(body.width, int(fields)), text)
@@ -215,6 +222,8 @@ def _read_fast(body: Body) -> tuple[dict[str, Numbers], dict[str, Words], int] |
     """Typed columns and the number of rows, or None if a row needs a closer look."""
     import pyarrow as pa
 
+    if 0 not in body.numbers.values() and b"#" in body.source.data:
+        return None  # a comment could pass for a row where the first cell may be text
     irregular = False
 
     def skip(_row: Any) -> str:
@@ -248,23 +257,30 @@ def _read_careful(body: Body, rows: Rows) -> tuple[dict[str, Numbers], dict[str,
             {name: Numbers(nothing) for name in body.numbers},
             {name: Words(np.empty(0, np.int32), ()) for name in body.words},
         )
-    longest = int((rows.stop - rows.start).max())
+    buffer = pa.py_buffer(rows.joined(body.data))
+    block = max(_BLOCK, 2 * int((rows.stop - rows.start).max()))
+    number = pa.float64()
     try:
-        buffer = pa.py_buffer(rows.joined(body.data))
-        table = _arrow(body, buffer, pa.string(), block=max(_BLOCK, 2 * longest))
-    except pa.ArrowInvalid as error:
-        raise InputError(f"cannot be taken apart: {error}", path=body.source.path) from None
+        table = _arrow(body, buffer, number, block=block)
+    except pa.ArrowInvalid:
+        number = pa.string()
+        try:
+            table = _arrow(body, buffer, number, block=block)
+        except pa.ArrowInvalid as error:
+            raise InputError(f"cannot be taken apart: {error}", path=body.source.path) from None
     if len(table) != len(rows.start):
         raise InputError(
             f"{len(rows.start)} rows were found but {len(table)} could be taken apart",
             path=body.source.path,
             remedy="Look for stray quotation marks.",
         )
-    numbers = {
-        name: numbers_from_text(table[name], decimal_point=body.decimal_point)
-        for name in body.numbers
-    }
-    return numbers, {name: words_from_arrow(table[name]) for name in body.words}
+    words = {name: words_from_arrow(table[name]) for name in body.words}
+    if number == pa.float64():
+        return {name: numbers_from_arrow(table[name]) for name in body.numbers}, words
+    point = body.decimal_point
+    return {
+        name: numbers_from_text(table[name], decimal_point=point) for name in body.numbers
+    }, words
 
 
 def _count_lines(buffer: Any) -> int:

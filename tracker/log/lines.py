@@ -30,6 +30,7 @@ class Rows:
     stop: Ints  # (n,) byte offset after the last, line end excluded
     line: Ints  # (n,) number of the first line, 1 for the first of the text
     fields: Ints  # (n,)
+    comments: int = 0  # lines left out because they begin with '#'
 
     def pick(self, keep: Mask) -> Rows:
         return Rows(self.start[keep], self.stop[keep], self.line[keep], self.fields[keep])
@@ -65,11 +66,13 @@ def find_rows(data: bytes, delimiter: str, *, path: Path) -> Rows:
     full = stop > start
     start, stop, line, fields = start[full], stop[full], line[full], fields[full]
     stop = stop - (text[stop - 1] == _RETURN)
-    keep = (stop > start) & (text[start] != _HASH)
+    comment = text[start] == _HASH
+    keep = (stop > start) & ~comment
     for k in np.flatnonzero(keep & np.isin(text[start], _BLANKS)).tolist():
         rest = data[start[k] : stop[k]].strip()
-        keep[k] = bool(rest) and not rest.startswith(b"#")
-    return Rows(start[keep], stop[keep], line[keep], fields[keep])
+        comment[k] = rest.startswith(b"#")
+        keep[k] = bool(rest) and not comment[k]
+    return Rows(start[keep], stop[keep], line[keep], fields[keep], int(comment.sum()))
 
 
 def _find_quoted_rows(data: bytes, delimiter: str, path: Path) -> Rows:
@@ -79,13 +82,15 @@ def _find_quoted_rows(data: bytes, delimiter: str, path: Path) -> Rows:
     position = 0  # lines handed out so far
     between_rows = True
     first = 0  # index of the row's first line
+    comments = 0
 
     def feed() -> Iterator[str]:
-        nonlocal position, between_rows, first
+        nonlocal position, between_rows, first, comments
         for position, raw in enumerate(lines, start=1):
             if between_rows:
                 bare = raw.strip()
                 if not bare or bare.startswith(b"#"):
+                    comments += bare.startswith(b"#")
                     continue
                 first = position - 1
                 between_rows = False
@@ -105,7 +110,7 @@ def _find_quoted_rows(data: bytes, delimiter: str, path: Path) -> Rows:
     if found and _is_open(data[found[-1][0] :], delimiter):
         raise _never_closed(path, found[-1][2])
     table = np.array(found, dtype=np.int64).reshape(-1, 4)
-    return Rows(table[:, 0], table[:, 1], table[:, 2], table[:, 3])
+    return Rows(table[:, 0], table[:, 1], table[:, 2], table[:, 3], comments)
 
 
 def _is_open(row: bytes, delimiter: str) -> bool:

@@ -15,7 +15,7 @@ _LABELS_SHOWN = 12
 
 
 def summary_text(summary: LogSummary, *, unicode: bool = True) -> str:
-    """The table; without `unicode` bars are made of '#'."""
+    """The table; without `unicode` it is ASCII, with '?' for characters that are not."""
     lines = [_clip(summary.name, WIDTH), "─" * WIDTH if unicode else "-" * WIDTH]
     lines += _facts(summary)
     if summary.scores is not None:
@@ -28,7 +28,8 @@ def summary_text(summary: LogSummary, *, unicode: bool = True) -> str:
     lines += [""] if summary.notes else []
     for note in summary.notes:
         lines += _row("note", note)
-    return "\n".join(line.rstrip() for line in lines) + "\n"
+    text = "\n".join(line.rstrip() for line in lines) + "\n"
+    return text if unicode else text.encode("ascii", "replace").decode()
 
 
 def _facts(summary: LogSummary) -> list[str]:
@@ -60,11 +61,13 @@ def _facts(summary: LogSummary) -> list[str]:
             "out of image", f"{s.outside.partly:,} boxes partly, {s.outside.wholly:,} wholly"
         )
     if s.near_duplicates is not None:
-        least = "" if s.near_duplicates.complete else "at least "
-        more = "" if s.near_duplicates.complete else "; too crowded to compare all"
+        least, more = (
+            ("", "") if s.near_duplicates.complete else ("at least ", "; not all compared")
+        )
+        pairs = f"{least}{s.near_duplicates.pairs:,} pairs of boxes in one frame"
         lines += _row(
             "duplicates",
-            f"{least}{s.near_duplicates.pairs:,} pairs of boxes in one frame with IoU > {NEAR_IOU:g}{more}",
+            f"{pairs} with IoU > {NEAR_IOU:g}{more}",
         )
     return lines
 

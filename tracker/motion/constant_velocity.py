@@ -6,10 +6,10 @@ import numpy as np
 
 from tracker.errors import KernelError
 from tracker.kernels.kalman import (
+    UPDATE_OF_DIMENSION,
     UPDATE_OK,
     initiate_constant_velocity,
     predict_constant_velocity,
-    update_constant_velocity,
 )
 from tracker.kernels.noise import axis_squares
 from tracker.log.model import Floats, Ints, Kind
@@ -21,11 +21,16 @@ class ConstantVelocity:
 
     Noise levels of boxes are in box scales, so near and far objects are treated alike; those of
     points in the log's own unit. States are (measured components, their rates).
+
+    coupled : whether the axes of the covariances may be correlated. Nothing here correlates them.
     """
+
+    coupled = False
 
     def __init__(self, settings: Settings, kind: Kind) -> None:
         self.dimension = kind.dimension
         self.states = 2 * kind.dimension
+        self._update = UPDATE_OF_DIMENSION[kind.dimension]
         self._motion = settings.motion
         self._measurement = settings.measurement
         self._boxes = kind is Kind.BOX
@@ -43,7 +48,7 @@ class ConstantVelocity:
             self._motion.size_noise,
             self._boxes,
         )
-        predict_constant_velocity(mean, covariance, step_seconds, density)
+        predict_constant_velocity(mean, covariance, step_seconds, density, self.coupled)
 
     def measurement_variance(self, z: Floats, sigma: Floats | None) -> Floats:
         """(m, d) variances of detections: from their sigma columns, else from the settings."""
@@ -59,17 +64,15 @@ class ConstantVelocity:
         return np.where(np.isnan(sigma), variance, sigma * sigma)
 
     def update(
-        self, mean: Floats, covariance: Floats, rows: Ints, z: Floats, variance: Floats
+        self, mean: Floats, covariance: Floats, pairing: Ints, z: Floats, variance: Floats
     ) -> None:
-        """Correct the states `rows` by (k, d) measurements, in place.
+        """Correct (n, s) states in place, each by detection ``pairing[i]`` of z, -1 for none.
 
-        Raises KernelError if an innovation covariance is not positive definite.
+        Raises KernelError if an innovation variance is not positive.
         """
-        status = update_constant_velocity(mean, covariance, rows, z, variance)
+        status = self._update(mean, covariance, pairing, z, variance, self.coupled)
         if status != UPDATE_OK:
-            raise KernelError(
-                f"the innovation covariance of table row {rows[status]} is not positive definite"
-            )
+            raise KernelError(f"the innovation variance of table row {status} is not positive")
 
     def initiate(self, z: Floats, variance: Floats) -> tuple[Floats, Floats]:
         """(k, s) and (k, s, s) states of new tracks: at the detection, at rest."""

@@ -62,7 +62,7 @@ class Recorder:
         self._held: deque[TrackRows] = deque()
         self._confirmed = np.zeros(1024, np.bool_)  # by track id
         self._last_seen = np.zeros(1024)  # by track id
-        self._corner: tuple[Ints, Ints] | None = None
+        self._corner = np.triu_indices(kind.dimension)
 
     @property
     def confirmed(self) -> int:
@@ -109,8 +109,9 @@ class Recorder:
             )
         if not self._early:
             reported &= result.state != TrackState.TENTATIVE
-        if self._corner is None:
-            self._corner = np.triu_indices(result.estimate.shape[1])
+        confidence = result.confidence
+        if confidence is None:
+            confidence = np.full(count, np.nan)
         return TrackRows(
             np.full(count, result.number, np.int64),
             np.full(count, result.time),
@@ -121,7 +122,7 @@ class Recorder:
             result.covariance[:, self._corner[0], self._corner[1]],
             result.score,
             result.label,
-            result.confidence,
+            confidence,
             result.state,
             reported,
             line,

@@ -1,0 +1,21 @@
+"""Wind: the mast sways, and the camera pans, tilts, rolls and breathes with it."""
+
+from __future__ import annotations
+
+from tracker.simulation.camera import CameraSceneSettings, film
+from tracker.simulation.scenes.scene import Scene
+from tracker.simulation.sway import SwaySettings
+
+SCENE = Scene(
+    name="sway",
+    summary="mast camera in the wind: pan, tilt, roll and zoom move; camera.csv has the truth",
+    settings=CameraSceneSettings(
+        sway=SwaySettings(
+            pan_sigma_degrees=0.9,
+            tilt_sigma_degrees=0.45,
+            roll_sigma_degrees=0.5,
+            zoom_sigma=0.004,
+        ),
+    ),
+    build=film,
+)
