@@ -107,12 +107,8 @@ def main() -> None:
     parser.add_argument("--objects", type=int, nargs="+", default=[1, 10, 100, 1000])
     parser.add_argument("--frames", type=int, default=90)
     options = parser.parse_args()
-    packages = ", ".join(
-        f"{name} {version(name)}" for name in ("numpy", "numba", "scipy", "filterpy")
-    )
-    print(
-        f"{platform.processor() or platform.machine()}, Python {platform.python_version()}, {packages}"
-    )
+    packages = [f"{name} {version(name)}" for name in ("numpy", "numba", "scipy", "filterpy")]
+    print(f"{platform.machine()}, Python {platform.python_version()}, {', '.join(packages)}")
     print(f"{'objects':>8} {'baseline ms':>12} {'engine ms':>10} {'ratio':>7}")
     measure(3, 9)  # compile
     for objects in options.objects:

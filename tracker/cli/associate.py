@@ -68,6 +68,7 @@ def associate(
 
     Example: margent associate sample_sequences/forecourt --out runs/forecourt
     """
+    from tracker.log.columns import parse_columns
     from tracker.settings import load_settings, settings_as_toml
 
     overrides = list(set_ or [])
@@ -80,23 +81,12 @@ def associate(
     if not logs:
         raise UsageError("name at least one detection log, or use --print-settings")
     reading = {
-        "columns": column_names(columns),
+        "columns": parse_columns(columns or []),
         "format": log_format,
         "drop_identities": drop_identities,
         "strict": strict,
     }
     _associate_all(logs, out, chosen, reading, workers)
-
-
-def column_names(pairs: list[str] | None) -> dict[str, str] | None:
-    """`theirs=ours` options as a mapping. Raises UsageError for anything else."""
-    names = {}
-    for pair in pairs or []:
-        theirs, equals, ours = pair.partition("=")
-        if not equals or not theirs or not ours:
-            raise UsageError(f"--columns takes THEIRS=OURS, found {pair!r}")
-        names[theirs.strip()] = ours.strip()
-    return names or None
 
 
 def _associate_all(
@@ -108,9 +98,15 @@ def _associate_all(
 
     several = len(paths) > 1
     failures: list[MargentError] = []
-    for outcome in associate_logs(
-        paths, out, settings, reading, workers, lambda frames, total: watched(frames, total=total, label="frames")
-    ):
+    outcomes = associate_logs(
+        paths,
+        out,
+        settings,
+        reading,
+        workers,
+        watch=lambda frames, total: watched(frames, total=total, label="frames"),
+    )
+    for outcome in outcomes:
         if isinstance(outcome.error, MargentError):
             if not several:
                 raise outcome.error

@@ -117,7 +117,7 @@ def _augment(
 def _move_prices(row: int, best: float, answer: Assignment, frontier: Frontier) -> None:
     """Move the prices of everything final by what is left of the path's length."""
     answer.row_price[row] = best
-    for k in range(frontier.count[0]):
+    for k in range(frontier.used[0]):
         j = frontier.touched[k]
         if frontier.done[j]:
             answer.row_price[answer.column_row[j]] += best - frontier.distance[j]

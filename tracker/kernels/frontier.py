@@ -24,7 +24,7 @@ class Frontier(NamedTuple):
     touched: NDArray[np.int64]  # (m,) columns that have been offered
     heap_key: NDArray[np.float64]  # (E + 1,) binary heap of offers, outdated ones included
     heap_column: NDArray[np.int64]  # (E + 1,)
-    count: NDArray[np.int64]  # (2,) how many touched, how many on the heap
+    used: NDArray[np.int64]  # (2,) how many touched, how many on the heap
 
 
 @njit(cache=True)
@@ -56,8 +56,8 @@ def offer(
     if frontier.done[column] or not distance < frontier.distance[column]:
         return
     if frontier.distance[column] == np.inf:
-        frontier.touched[frontier.count[0]] = column
-        frontier.count[0] += 1
+        frontier.touched[frontier.used[0]] = column
+        frontier.used[0] += 1
     frontier.distance[column] = distance
     frontier.from_row[column] = row
     frontier.from_candidate[column] = candidate
@@ -69,14 +69,14 @@ def offer(
 def nearest(frontier: Frontier, use_heap: bool) -> int:
     """Column of the smallest distance that is not final, the first of equals; -1 if none."""
     if use_heap:
-        while frontier.count[1] > 0:
+        while frontier.used[1] > 0:
             column = frontier.heap_column[0]
             if not frontier.done[column] and frontier.heap_key[0] == frontier.distance[column]:
                 return column
             _pop(frontier)
         return -1
     best = -1
-    for k in range(frontier.count[0]):
+    for k in range(frontier.used[0]):
         column = frontier.touched[k]
         if frontier.done[column]:
             continue
@@ -88,11 +88,11 @@ def nearest(frontier: Frontier, use_heap: bool) -> int:
 @njit(cache=True)
 def clear(frontier: Frontier) -> None:
     """Make the scratch as new, in time proportional to what was touched."""
-    for k in range(frontier.count[0]):
+    for k in range(frontier.used[0]):
         frontier.distance[frontier.touched[k]] = np.inf
         frontier.done[frontier.touched[k]] = False
-    frontier.count[0] = 0
-    frontier.count[1] = 0
+    frontier.used[0] = 0
+    frontier.used[1] = 0
 
 
 @njit(cache=True)
@@ -105,8 +105,8 @@ def _before(key_a: float, column_a: int, key_b: float, column_b: int) -> bool:
 def _push(frontier: Frontier, key: float, column: int) -> None:
     keys = frontier.heap_key
     columns = frontier.heap_column
-    hole = frontier.count[1]
-    frontier.count[1] += 1
+    hole = frontier.used[1]
+    frontier.used[1] += 1
     while hole > 0:
         up = (hole - 1) >> 1
         if not _before(key, column, keys[up], columns[up]):
@@ -122,8 +122,8 @@ def _push(frontier: Frontier, key: float, column: int) -> None:
 def _pop(frontier: Frontier) -> None:
     keys = frontier.heap_key
     columns = frontier.heap_column
-    frontier.count[1] -= 1
-    size = frontier.count[1]
+    frontier.used[1] -= 1
+    size = frontier.used[1]
     key = keys[size]
     column = columns[size]
     hole = 0

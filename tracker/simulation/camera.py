@@ -49,7 +49,9 @@ class ViewSettings(Section):
         float, Share, about("Objects with less of their box inside the image are not in view")
     ] = 0.3
     body_fill: Annotated[
-        float, Share, about("Share of its box's width that a body really covers, when it hides others")
+        float,
+        Share,
+        about("Share of its box's width that a body really covers, when it hides others"),
     ] = 0.8
 
 

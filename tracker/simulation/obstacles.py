@@ -11,9 +11,7 @@ from tracker.simulation.site import SiteSettings
 SLICE_M = 1.0  # a tall thing leans in the picture: a stack of low boxes follows it
 
 
-def obstacle_boxes(
-    site: SiteSettings, pose: Pose, camera: CameraSettings
-) -> tuple[Floats, Floats]:
+def obstacle_boxes(site: SiteSettings, pose: Pose, camera: CameraSettings) -> tuple[Floats, Floats]:
     """Boxes (poses, k, 4) left, top, width, height of all slices, and their depths (poses, k)."""
     poses = len(pose.pan)
     boxes, depths = [], []

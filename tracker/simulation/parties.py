@@ -8,7 +8,7 @@ import numpy as np
 
 from tracker.log.model import Codes, Floats, Ints
 from tracker.simulation.site import BodySettings, SiteSettings, TrafficSettings
-from tracker.simulation.streams import Streams
+from tracker.simulation.streams import Streams, poisson_times
 
 LABELS = ("bicycle", "cart", "person")
 BICYCLE, CART, PERSON = range(3)
@@ -46,7 +46,7 @@ def arrive(
     site: SiteSettings, traffic: TrafficSettings, begin: float, end: float, streams: Streams
 ) -> Crowd:
     """Draw all parties that come in between `begin` and `end` seconds."""
-    times = _poisson_times(traffic.arrivals_per_minute / 60.0, begin, end, streams("arrivals"))
+    times = poisson_times(traffic.arrivals_per_minute / 60.0, begin, end, streams("arrivals"))
     count = len(times)
     kinds = streams("parties").random((count, 4))
     members = [member for k in range(count) for member in _party(k, traffic, kinds[k])]
@@ -67,7 +67,9 @@ def arrive(
         place=place,
         enters_at=times[party],
         enters_at_xy=entry[party] + place,
-        route=np.where((np.arange(MOST_STOPS + 1) < last[:, None])[..., None], route, route[:, -1:]),
+        route=np.where(
+            (np.arange(MOST_STOPS + 1) < last[:, None])[..., None], route, route[:, -1:]
+        ),
         stays=stays[party],
         last=last,
         speed=speed,
@@ -75,14 +77,6 @@ def arrive(
         size=size,
         label=label,
     )
-
-
-def _poisson_times(rate: float, begin: float, end: float, rng: np.random.Generator) -> Floats:
-    """Times of a Poisson process, at least one; a later `end` adds times and changes none."""
-    times = [begin + rng.exponential(1.0 / rate)]
-    while times[-1] < end:
-        times.append(times[-1] + rng.exponential(1.0 / rate))
-    return np.array(times[:-1] or [begin])
 
 
 def _party(

@@ -27,7 +27,9 @@ class CameraSettings(Section):
     focal_px: Annotated[float, Positive, about("Focal length", "px")] = 1000.0
     mast_height_m: Annotated[float, Positive, about("Height above the ground", "m")] = 8.0
     tilt_degrees: Annotated[
-        float, Meta(gt=0.0, lt=90.0), about("Angle of the optical axis below the horizon", "degrees")
+        float,
+        Meta(gt=0.0, lt=90.0),
+        about("Angle of the optical axis below the horizon", "degrees"),
     ] = 22.0
 
 

@@ -33,9 +33,7 @@ class DetectionSettings(Section):
     scaled to 1 at full visibility, and h = size^4 / (size^4 + size_half^4).
     """
 
-    probability: Annotated[
-        float, Share, about("P_D of a large object in full view")
-    ] = 0.97
+    probability: Annotated[float, Share, about("P_D of a large object in full view")] = 0.97
     visibility_half: Annotated[
         float, Share, about("Visible share at the middle of the logistic curve")
     ] = 0.25
@@ -47,7 +45,10 @@ class DetectionSettings(Section):
     size_half: Annotated[
         float,
         NonNegative,
-        about("Size at which P_D is halved; 0 switches this off", "px of height, or m"),
+        about(
+            "Size at which P_D is halved; 0 switches this off",
+            "px of height (camera), degrees of width (lidar, radar)",
+        ),
     ] = 14.0
     miss_correlation_seconds: Annotated[
         float,
@@ -78,9 +79,7 @@ class NoiseSettings(Section):
 class ScoreSettings(Section):
     """Scores: 1 / (1 + exp(-g)) of a Gaussian g, one for objects and one for clutter."""
 
-    object_mean: Annotated[
-        float, about("Mean of g for objects in full view", "logits")
-    ] = 1.6
+    object_mean: Annotated[float, about("Mean of g for objects in full view", "logits")] = 1.6
     object_sigma: Annotated[float, NonNegative, about("Its standard deviation", "logits")] = 0.8
     visibility_gain: Annotated[
         float, NonNegative, about("The mean falls by this as an object disappears", "logits")
@@ -124,13 +123,13 @@ class DeliverySettings(Section):
     outage_seconds: Annotated[
         float, Positive, about("Mean length of an outage (exponential)", "s")
     ] = 1.0
-    drop_probability: Annotated[
-        float, Share, about("Chance that a frame is lost on its own")
-    ] = 0.0
+    drop_probability: Annotated[float, Share, about("Chance that a frame is lost on its own")] = 0.0
     jitter_sigma_seconds: Annotated[
         float,
         NonNegative,
-        about("Standard deviation of capture times, cut at 0.4 frames so that they stay in order", "s"),
+        about(
+            "Standard deviation of capture times, cut at 0.4 frames so that they stay in order", "s"
+        ),
     ] = 0.0
     latency_seconds: Annotated[
         float, NonNegative, about("Shortest time between capture and arrival", "s")

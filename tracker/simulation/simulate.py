@@ -20,9 +20,7 @@ def find_scene(name: str) -> Scene:
     raise UsageError(f"there is no scene '{name}' (there are {', '.join(SCENES)}){hint}")
 
 
-def simulate(
-    scene: str, *, seed: int, settings: SceneSettings | None = None
-) -> SimulatedSequence:
+def simulate(scene: str, *, seed: int, settings: SceneSettings | None = None) -> SimulatedSequence:
     """Simulate one scene of Tern Quay, without writing anything.
 
     The same scene, seed and settings give the same numbers. Each component (arrivals, walking,

@@ -95,7 +95,9 @@ class TrafficSettings(Section):
         float, Positive, about("Rate at which parties come in (Poisson process)", "1/min")
     ] = 20.0
     warm_up_seconds: Annotated[
-        float, NonNegative, about("Simulated before the first frame, so that the place is in use", "s")
+        float,
+        NonNegative,
+        about("Simulated before the first frame, so that the place is in use", "s"),
     ] = 60.0
     bicycle_share: Annotated[float, Share, about("Share of parties that are one bicycle")] = 0.10
     cart_share: Annotated[

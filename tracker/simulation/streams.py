@@ -68,3 +68,11 @@ def correlated_normals(
 def happens(probability: Floats, normals: Floats) -> NDArray[np.bool_]:
     """(n,) True with the given probabilities, decided by (n,) standard normal numbers."""
     return np.asarray(ndtr(normals) < probability, dtype=bool)
+
+
+def poisson_times(rate: float, begin: float, end: float, rng: np.random.Generator) -> Floats:
+    """Sorted times of a Poisson process, at least one; a later `end` adds times and changes none."""
+    times = [begin + rng.exponential(1.0 / rate)]
+    while times[-1] < end:
+        times.append(times[-1] + rng.exponential(1.0 / rate))
+    return np.array(times[:-1] or [begin])

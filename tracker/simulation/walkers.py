@@ -40,9 +40,7 @@ class _State:
     gone: Mask
 
 
-def walk(
-    site: SiteSettings, traffic: TrafficSettings, times: Floats, streams: Streams
-) -> Movement:
+def walk(site: SiteSettings, traffic: TrafficSettings, times: Floats, streams: Streams) -> Movement:
     """Simulate from `warm_up_seconds` before time 0 and record at `times` (sorted, seconds)."""
     begin = -traffic.warm_up_seconds
     steps = int(np.ceil((times[-1] - begin) / STEP_SECONDS)) + 1
@@ -94,7 +92,9 @@ def _advance(
     push = _push(xy, crowd.radius[active], site, traffic)
     drive = rng.standard_normal((len(active), 2)) * traffic.acceleration_noise
     still = (state.waits_until[active] > now)[:, None]
-    acceleration = (wanted - velocity) / traffic.relaxation_seconds + np.where(still, 0.3, 1.0) * push
+    acceleration = (wanted - velocity) / traffic.relaxation_seconds + np.where(
+        still, 0.3, 1.0
+    ) * push
     velocity = velocity + STEP_SECONDS * acceleration
     velocity = velocity + np.where(still, 0.1, 1.0) * drive * np.sqrt(STEP_SECONDS)
     speed = np.sqrt((velocity**2).sum(axis=1))
