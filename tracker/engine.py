@@ -12,7 +12,8 @@ from numpy.typing import NDArray
 
 from tracker.association import TierDecision, associate
 from tracker.association.rule import association_rules
-from tracker.errors import UsageError
+from tracker.errors import InputError, UsageError
+from tracker.kernels.cost import blend_embeddings
 from tracker.kernels.lifecycle import ENDED, advance, expire, take_over, weigh
 from tracker.kernels.snapshot import measured_part
 from tracker.lifecycle.rules import Reason
@@ -114,6 +115,11 @@ class Engine:
         self.explain = explain
         self.now = -np.inf
         self._birth_score = self.settings.lifecycle.birth_score
+        # Weight of the past in the tracks' embeddings; None if no tier looks at appearance.
+        self._memory = next(
+            (rule.cost.appearance.memory for rule in self.rules if "appearance" in rule.terms),
+            None,
+        )
 
     def step(self, frame: Frame) -> FrameResult:
         """Take one frame in; frames must come in order of time.
@@ -122,6 +128,8 @@ class Engine:
         frame with too many candidates, CertificateError if an assignment is not proved optimal.
         """
         elapsed = self._elapse(frame)
+        if self._memory is not None:
+            self._meet_embeddings(frame)
         life = self.settings.lifecycle
         table = self.table
 
@@ -140,6 +148,8 @@ class Engine:
             self._weigh(tiers)
 
         self.motion.update(table.mean, table.covariance, pairing, frame.z, variance)
+        if self._memory is not None and frame.embedding is not None:
+            blend_embeddings(table.embedding, pairing, frame.embedding, self._memory)
         paired = take_over(table.score, table.label, pairing, frame.score, frame.label)
         changed, before, reason, ended = advance(
             table.state,
@@ -173,6 +183,22 @@ class Engine:
             )
         self.now = frame.time
         return elapsed if np.isfinite(elapsed) else 0.0
+
+    def _meet_embeddings(self, frame: Frame) -> None:
+        """Make sure that the frame's embeddings fit the tracks'."""
+        if frame.embedding is None:
+            raise InputError(
+                "the cost term 'appearance' needs embeddings, and the log has none",
+                remedy="Add embedding_0, embedding_1, … columns or take it out of cost.terms.",
+            )
+        length = frame.embedding.shape[1]
+        if self.table.embedding.shape[1] == 0:
+            self.table.hold_embeddings(length)
+        elif self.table.embedding.shape[1] != length:
+            raise InputError(
+                f"frame {frame.number} has embeddings of {length} numbers, earlier ones had "
+                f"{self.table.embedding.shape[1]}"
+            )
 
     def _end(self, gone: NDArray[np.bool_]) -> Transitions:
         rows = np.flatnonzero(gone)
@@ -213,6 +239,9 @@ class Engine:
         identity = table.append(
             mean, covariance, frame.score[chosen], frame.label[chosen], frame.time
         )
+        if frame.embedding is not None and self._memory is not None:
+            # A new track's mean is the unit vector of its only detection.
+            blend_embeddings(table.embedding[-len(chosen) :], chosen, frame.embedding, 0.0)
         count = len(chosen)
         events = [
             Transitions(

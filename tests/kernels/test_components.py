@@ -38,6 +38,6 @@ def test_numbered_by_first_row_then_lone_columns():
 
 
 def test_members_by_label():
-    label = np.array([2, 0, 2, 1])
+    label = np.array([2, 0, -1, 2, 1])
     start, member = members(label, 4)
     assert [member[start[k] : start[k + 1]].tolist() for k in range(4)] == twin.members(label, 4)

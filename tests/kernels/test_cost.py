@@ -6,7 +6,14 @@ import numpy as np
 import pytest
 
 from tests.reference import cost as twin
-from tracker.kernels.cost import likelihood_term, mahalanobis_term, overlap_term
+from tracker.kernels.cost import (
+    appearance_term,
+    blend_embeddings,
+    label_term,
+    likelihood_term,
+    mahalanobis_term,
+    overlap_term,
+)
 
 
 def test_overlap_term():
@@ -35,3 +42,33 @@ def test_likelihood_term_equals_scipys_density():
             math.log(density),
         )
         assert term[0] == pytest.approx(twin.likelihood_term(innovation, sigma, density), rel=1e-12)
+
+
+def test_label_term():
+    track, detection = np.array([0, 1, -1, 2], np.int32), np.array([0, 2, 1, -1], np.int32)
+    expected = twin.label_term(track, detection, 0.5, 3.0)
+    assert label_term(track, detection, 0.5, 3.0).tolist() == expected == [-0.5, 3.0, 0.0, 0.0]
+
+
+def embeddings(seed, count):
+    vectors = np.random.default_rng(seed).normal(size=(count, 8)).astype(np.float32)
+    vectors[0] = 0.0  # says nothing
+    return vectors
+
+
+def test_appearance_term():
+    tracks, seen = embeddings(1, 5), embeddings(2, 6)
+    row, column = np.array([0, 1, 2, 4, 3]), np.array([3, 0, 2, 5, 1])
+    term = appearance_term(tracks, row, seen, column, 4.0, 0.5)
+    expected = twin.appearance_term(tracks, row, seen, column, 4.0, 0.5)
+    np.testing.assert_allclose(term, expected, rtol=1e-6, atol=1e-12)
+    same = appearance_term(tracks, np.array([1]), 7.0 * tracks, np.array([1]), 4.0, 0.5)
+    assert same[0] == pytest.approx(-2.0, rel=1e-6)
+
+
+def test_blend_embeddings():
+    tracks, seen = embeddings(3, 4), embeddings(4, 4)
+    pairing = np.array([1, -1, 0, 3])
+    expected = twin.blend_embeddings(tracks, pairing, seen, 0.9)
+    blend_embeddings(tracks, pairing, seen, 0.9)
+    np.testing.assert_allclose(tracks, expected, rtol=1e-5, atol=1e-6)

@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 
 from tests.reference import overlap as twin
-from tracker.kernels.overlap import box_overlap, overlap_matrix
+from tracker.kernels.overlap import box_overlap, generalised_overlap, overlap_matrix
 
 shapely = pytest.importorskip("shapely")
 
@@ -39,3 +39,14 @@ def test_edges_and_degenerate_boxes():
     overlap = overlap_matrix(unit[None], others)[0]
     np.testing.assert_allclose(overlap, [1.0, 0.0, 0.0, 0.0], atol=1e-8)
     assert overlap_matrix(np.empty((0, 4)), boxes(1)).shape == (0, 40)
+
+
+def test_generalised_overlap_equals_the_twin_and_the_paper():
+    a, b = boxes(5), boxes(6)
+    np.testing.assert_allclose(
+        generalised_overlap(a, b), twin.generalised_overlap(a, b), rtol=1e-12, atol=1e-14
+    )
+    # Two unit squares one apart: IoU 0, hull 3 x 1, union 2 (Rezatofighi et al. 2019, definition).
+    apart = generalised_overlap(np.array([[0.0, 0, 1, 1]]), np.array([[2.0, 0, 1, 1]]))
+    assert apart[0] == pytest.approx(-1 / 3)
+    assert generalised_overlap(a, a).tolist() == pytest.approx([1.0] * len(a))

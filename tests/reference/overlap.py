@@ -14,3 +14,19 @@ def box_overlap(a, b):
 def overlap_matrix(a, b):
     """IoU of all pairs."""
     return [[box_overlap(one, other) for other in b] for one in a]
+
+
+def generalised_overlap(a, b):
+    """GIoU pair by pair, from areas."""
+    out = []
+    for one, other in zip(a, b, strict=True):
+        left = min(one[0] - one[2] / 2, other[0] - other[2] / 2)
+        right = max(one[0] + one[2] / 2, other[0] + other[2] / 2)
+        top = min(one[1] - one[3] / 2, other[1] - other[3] / 2)
+        bottom = max(one[1] + one[3] / 2, other[1] + other[3] / 2)
+        around = (right - left) * (bottom - top)
+        iou = box_overlap(one, other)
+        areas = one[2] * one[3] + other[2] * other[3]
+        union = areas - iou * areas / (1 + iou)
+        out.append(iou - (around - union) / around)
+    return out

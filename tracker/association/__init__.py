@@ -1,6 +1,8 @@
 """Gate, cost, assignment: who belongs to whom in one frame, and the proof of it."""
 
 from tracker.association.associate import TierDecision, associate
+from tracker.association.pairs import CandidatePairs
 from tracker.association.rule import AssociationRule
+from tracker.association.terms import register_cost
 
-__all__ = ["AssociationRule", "TierDecision", "associate"]
+__all__ = ["AssociationRule", "CandidatePairs", "TierDecision", "associate", "register_cost"]

@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tracker.association.cost import candidate_costs
+from tracker.association.pairs import CandidatePairs
 from tracker.association.rule import AssociationRule
 from tracker.errors import CertificateError, InputError, KernelError
 from tracker.kernels.assignment import Problem
@@ -142,7 +143,8 @@ def _decide(
             f"frame {frame.number}: the innovation covariance of track "
             f"{table.identity[row if tracks is None else tracks[row]]} is not positive definite"
         )
-    terms, cost = candidate_costs(rule, candidates)
+    pairs = CandidatePairs(candidates, table, frame, tracks, detections)
+    terms, cost = candidate_costs(rule, pairs)
     problem = Problem(
         candidates.start,
         candidates.column,

@@ -1,34 +1,30 @@
-"""Costs of a frame's candidates: named terms in nats, added up.
-
-To add a term: a kernel in kernels/cost.py, a branch here, its name in settings/schema.py.
-"""
+"""Costs of a frame's candidates: named terms in nats, added up."""
 
 from __future__ import annotations
 
 import numpy as np
 
+from tracker.association.pairs import CandidatePairs
 from tracker.association.rule import AssociationRule
-from tracker.kernels.cost import likelihood_term, mahalanobis_term, overlap_term
-from tracker.kernels.gate import Candidates
+from tracker.association.terms import evaluate_term
 from tracker.log.model import Floats
 
 
-def candidate_costs(rule: AssociationRule, candidates: Candidates) -> tuple[Floats, Floats]:
-    """(T, E) terms in the order of ``rule.terms``, and (E,) their sum plus −ln P_D, in nats."""
+def candidate_costs(rule: AssociationRule, pairs: CandidatePairs) -> tuple[Floats, Floats]:
+    """(T, E) terms in the order of ``rule.terms``, and (E,) their sum plus −ln P_D, in nats.
+
+    Raises what `evaluate_term` raises.
+    """
     if len(rule.terms) == 1:
-        term = _term(rule.terms[0], rule, candidates)
+        term = _term(rule.terms[0], rule, pairs)
         return term[np.newaxis], term + rule.paid
-    terms = np.empty((len(rule.terms), len(candidates.column)))
+    terms = np.empty((len(rule.terms), len(pairs)))
     for k, name in enumerate(rule.terms):
-        terms[k] = _term(name, rule, candidates)
+        terms[k] = _term(name, rule, pairs)
     return terms, terms.sum(axis=0) + rule.paid
 
 
-def _term(name: str, rule: AssociationRule, candidates: Candidates) -> Floats:
-    if name == "overlap":
-        return overlap_term(candidates.overlap, rule.overlap_nats, rule.overlap_neutral)
-    if name == "mahalanobis":
-        return mahalanobis_term(candidates.distance, rule.threshold)
-    return likelihood_term(
-        candidates.distance, candidates.log_volume, rule.dimension, rule.log_new_density
+def _term(name: str, rule: AssociationRule, pairs: CandidatePairs) -> Floats:
+    return evaluate_term(
+        name, pairs, rule.cost, rule.threshold, rule.dimension, rule.log_new_density
     )

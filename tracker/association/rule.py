@@ -8,10 +8,11 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.special import gammaincinv
 
+from tracker.association.terms import TERMS, known_terms, registered_costs
 from tracker.errors import SettingsError
 from tracker.log.model import Kind
 from tracker.results.tracks import TrackState
-from tracker.settings.schema import Settings, TierSettings
+from tracker.settings.schema import CostSettings, Settings, TierSettings
 
 
 @dataclass(frozen=True, slots=True)
@@ -29,8 +30,7 @@ class AssociationRule:
     overlap_floor: float
     candidate_limit: int
     terms: tuple[str, ...]
-    overlap_nats: float
-    overlap_neutral: float
+    cost: CostSettings
     log_new_density: float
     miss: float
     paid: float
@@ -77,9 +77,14 @@ def _rule(settings: Settings, tier: TierSettings, kind: Kind, where: str) -> Ass
         )
     terms = tuple(_resolve_term(term, kind, cost.new_density) for term in cost.terms)
     for term in terms:
-        if term == "overlap" and not boxes:
+        if term not in TERMS and term not in registered_costs():
             raise SettingsError(
-                "'overlap' needs boxes, these are points; use 'mahalanobis' or 'likelihood'",
+                f"there is no cost term '{term}'; there are {', '.join(known_terms())}",
+                setting=f"{cost_path}.terms",
+            )
+        if term in ("overlap", "generalised-overlap") and not boxes:
+            raise SettingsError(
+                f"'{term}' needs boxes, these are points; use 'mahalanobis' or 'likelihood'",
                 setting=f"{cost_path}.terms",
             )
         if term == "mahalanobis" and gate.probability is None:
@@ -105,8 +110,7 @@ def _rule(settings: Settings, tier: TierSettings, kind: Kind, where: str) -> Ass
         overlap_floor=gate.overlap_floor,
         candidate_limit=gate.candidate_limit,
         terms=terms,
-        overlap_nats=cost.overlap.nats,
-        overlap_neutral=cost.overlap.neutral,
+        cost=cost,
         log_new_density=math.log(cost.new_density) if cost.new_density else math.nan,
         miss=-math.log1p(-detected * inside),
         paid=-math.log(detected),

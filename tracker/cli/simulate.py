@@ -85,7 +85,8 @@ def simulate(
         raise UsageError(f"--video writes MP4 files: name it {video.stem}.mp4 (found {video.name})")
     sequence = simulate_scene(scene, seed=seed, settings=chosen)
     folder = out or Path(f"{scene}-{seed}")
-    write_sequence(sequence, folder)
+    inside = video is not None and video.absolute().parent == folder.absolute()
+    write_sequence(sequence, folder, replacing={video.name} if video and inside else ())
     if video is not None:
         _draw(sequence, video)
     print(

@@ -30,17 +30,22 @@ def _root(parent: NDArray[np.int64], node: int) -> int:
 
 @njit(cache=True)
 def members(label: NDArray[np.int64], count: int) -> tuple[NDArray, NDArray]:
-    """Group indices by label: (count + 1,) starts, and the indices, increasing within a label."""
+    """Group indices by label 0 … count − 1; those labelled -1 are left out.
+
+    Returns (count + 1,) starts, and the indices, increasing within a label.
+    """
     start = np.zeros(count + 1, np.int64)
     for k in range(len(label)):
-        start[label[k] + 1] += 1
+        if label[k] >= 0:
+            start[label[k] + 1] += 1
     for c in range(count):
         start[c + 1] += start[c]
     fill = start[:count].copy()
-    member = np.empty(len(label), np.int64)
+    member = np.empty(start[count], np.int64)
     for k in range(len(label)):
-        member[fill[label[k]]] = k
-        fill[label[k]] += 1
+        if label[k] >= 0:
+            member[fill[label[k]]] = k
+            fill[label[k]] += 1
     return start, member
 
 

@@ -40,3 +40,79 @@ def likelihood_term(
         log_likelihood = -0.5 * (distance[e] + log_volume[e] + dimension * LOG_TWO_PI)
         out[e] = log_new_density - log_likelihood
     return out
+
+
+@njit(cache=True)
+def label_term(
+    track_label: NDArray[np.int32],
+    detection_label: NDArray[np.int32],
+    agree_nats: float,
+    differ_nats: float,
+) -> NDArray[np.float64]:
+    """(E,) −agree_nats for equal labels, differ_nats for others, 0 if one is unknown (-1)."""
+    out = np.empty(len(track_label))
+    for e in range(len(track_label)):
+        if track_label[e] < 0 or detection_label[e] < 0:
+            out[e] = 0.0
+        else:
+            out[e] = -agree_nats if track_label[e] == detection_label[e] else differ_nats
+    return out
+
+
+@njit(cache=True)
+def appearance_term(
+    track_embedding: NDArray[np.float32],
+    row: NDArray[np.int64],
+    detection_embedding: NDArray[np.float32],
+    column: NDArray[np.int64],
+    nats: float,
+    neutral: float,
+) -> NDArray[np.float64]:
+    """(E,) nats · (neutral − cosine similarity) of track row[e] and detection column[e].
+
+    track_embedding : (n, k) running means, detection_embedding : (m, k); neither need be of unit
+    length. A zero vector says nothing: its term is 0.
+    """
+    out = np.empty(len(row))
+    for e in range(len(row)):
+        dot = 0.0
+        own = 0.0
+        other = 0.0
+        for c in range(track_embedding.shape[1]):
+            a = float(track_embedding[row[e], c])
+            b = float(detection_embedding[column[e], c])
+            dot += a * b
+            own += a * a
+            other += b * b
+        if own > 0.0 and other > 0.0:
+            out[e] = nats * (neutral - dot / np.sqrt(own * other))
+        else:
+            out[e] = 0.0
+    return out
+
+
+@njit(cache=True)
+def blend_embeddings(
+    track_embedding: NDArray[np.float32],
+    pairing: NDArray[np.int64],
+    detection_embedding: NDArray[np.float32],
+    memory: float,
+) -> None:
+    """Running mean of unit vectors, in place: e ← memory · e + (1 − memory) · z / |z|.
+
+    track_embedding : (n, k).   pairing : (n,) detection of each track, -1 for none.
+    """
+    for i in range(len(pairing)):
+        j = pairing[i]
+        if j < 0:
+            continue
+        length = 0.0
+        for c in range(detection_embedding.shape[1]):
+            length += float(detection_embedding[j, c]) ** 2
+        if length == 0.0:
+            continue
+        share = (1.0 - memory) / np.sqrt(length)
+        for c in range(detection_embedding.shape[1]):
+            track_embedding[i, c] = (
+                memory * track_embedding[i, c] + share * detection_embedding[j, c]
+            )

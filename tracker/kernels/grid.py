@@ -70,7 +70,7 @@ def meeting_pairs(
         if not reach < np.inf:
             return _by_double_loop(low, high, other_low, other_high)
         if reach > 0.0:
-            inverse[axis] = 1.0 / reach
+            inverse[axis] = 0.5 / reach
     return _by_grid(low, high, other_low, other_high, inverse, limit)
 
 
@@ -105,7 +105,7 @@ def _by_grid(
     inverse: NDArray,
     limit: int,
 ) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
-    """The join through a grid whose cells are about as large as rectangles reach.
+    """The join through a grid whose cells are about twice as large as rectangles reach.
 
     A pair that shares several cells is reported once: from the cell that holds the lower corner
     of the intersection (Dittrich and Seeger 2000).

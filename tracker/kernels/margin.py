@@ -138,19 +138,32 @@ def margins(
     """
     row_margin = np.full(len(problem.miss), np.inf)
     column_margin = np.full(len(problem.new), np.inf)
+    # Most components hold one candidate and are done at once; the others are grouped.
+    group = np.full(len(components.candidates), -1, np.int64)
+    groups = 0
+    for c in range(len(components.candidates)):
+        if components.candidates[c] > 1:
+            group[c] = groups
+            groups += 1
+    row_group = np.empty(len(problem.miss), np.int64)
+    for i in range(len(problem.miss)):
+        c = components.of_row[i]
+        row_group[i] = group[c]
+        if components.candidates[c] == 1 and problem.start[i] < problem.start[i + 1]:
+            _lone_candidate(i, problem, row_margin, column_margin)
+    if groups == 0:
+        return row_margin, column_margin
+    column_group = np.empty(len(problem.new), np.int64)
+    for j in range(len(problem.new)):
+        column_group[j] = group[components.of_column[j]]
     hub_distance = np.empty(len(problem.new))
-    count = len(components.candidates)
-    row_start, row = members(components.of_row, count)
-    column_start, column = members(components.of_column, count)
-    for c in range(count):
-        if components.candidates[c] == 0:
-            continue
-        if components.candidates[c] == 1:
-            _lone_candidate(row[row_start[c]], problem, row_margin, column_margin)
-            continue
-        use_heap = prefers_heap(components.rows[c], components.columns[c], components.candidates[c])
-        rows = row[row_start[c] : row_start[c + 1]]
-        columns = column[column_start[c] : column_start[c + 1]]
+    row_start, row = members(row_group, groups)
+    column_start, column = members(column_group, groups)
+    for k in range(groups):
+        rows = row[row_start[k] : row_start[k + 1]]
+        columns = column[column_start[k] : column_start[k + 1]]
+        candidates = components.candidates[components.of_row[rows[0]]]
+        use_heap = prefers_heap(len(rows), len(columns), candidates)
         _from_hub(rows, columns, problem, answer, frontier, use_heap, hub_distance)
         for i in rows:
             j = answer.row_column[i]

@@ -1,4 +1,4 @@
-"""Intersection over union of axis-aligned boxes given by centre and size."""
+"""Overlap of axis-aligned boxes given by centre and size: IoU and its generalisation."""
 
 from __future__ import annotations
 
@@ -36,4 +36,29 @@ def overlap_matrix(a: NDArray[np.float64], b: NDArray[np.float64]) -> NDArray[np
     for i in range(len(a)):
         for j in range(len(b)):
             out[i, j] = box_overlap(a, i, b, j)
+    return out
+
+
+@njit(cache=True)
+def generalised_overlap(a: NDArray[np.float64], b: NDArray[np.float64]) -> NDArray[np.float64]:
+    """(E,) generalised IoU in (-1, 1] of (E, ≥ 4) boxes, pair by pair.
+
+    IoU minus the share of the common bounding box that neither covers (Rezatofighi et al. 2019),
+    so that boxes that do not touch still differ by how far apart they are.
+    """
+    out = np.empty(len(a))
+    for e in range(len(a)):
+        aw, ah = max(a[e, 2], SMALLEST_SIZE), max(a[e, 3], SMALLEST_SIZE)
+        bw, bh = max(b[e, 2], SMALLEST_SIZE), max(b[e, 3], SMALLEST_SIZE)
+        shared = box_overlap(a, e, b, e)
+        # IoU = s / (A + B − s), so the union is (A + B) / (1 + IoU).
+        union = (aw * ah + bw * bh) / (1.0 + shared)
+        width = max(a[e, 0] + 0.5 * aw, b[e, 0] + 0.5 * bw) - min(
+            a[e, 0] - 0.5 * aw, b[e, 0] - 0.5 * bw
+        )
+        height = max(a[e, 1] + 0.5 * ah, b[e, 1] + 0.5 * bh) - min(
+            a[e, 1] - 0.5 * ah, b[e, 1] - 0.5 * bh
+        )
+        around = width * height
+        out[e] = shared - (around - union) / around
     return out

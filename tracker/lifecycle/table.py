@@ -26,6 +26,7 @@ class TrackTable:
     log_confidence: Floats  # (n,) natural log of the identity confidence
     mean: Floats  # (n, s)
     covariance: Floats  # (n, s, s)
+    embedding: NDArray[np.float32]  # (n, k) running mean, k = 0 if appearance is not used
 
     _NAMES = (
         "identity",
@@ -38,6 +39,7 @@ class TrackTable:
         "log_confidence",
         "mean",
         "covariance",
+        "embedding",
     )
 
     def __init__(self, states: int) -> None:
@@ -54,6 +56,7 @@ class TrackTable:
             "log_confidence": np.empty(0),
             "mean": np.empty((0, states)),
             "covariance": np.empty((0, states, states)),
+            "embedding": np.empty((0, 0), np.float32),
         }
         self._refresh()
 
@@ -64,6 +67,11 @@ class TrackTable:
     def born(self) -> int:
         """How many tracks there have been."""
         return self._next_identity - 1
+
+    def hold_embeddings(self, length: int) -> None:
+        """Make room for embeddings of that length; zero, which says nothing, until one is seen."""
+        self._store["embedding"] = np.zeros((len(self._store["identity"]), length), np.float32)
+        self._refresh()
 
     def append(
         self, mean: Floats, covariance: Floats, score: Floats, label: Codes, now: float
@@ -84,6 +92,7 @@ class TrackTable:
             "log_confidence": 0.0,
             "mean": mean,
             "covariance": covariance,
+            "embedding": 0.0,
         }
         for name, value in values.items():
             self._store[name][first:last] = value

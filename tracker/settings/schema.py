@@ -135,21 +135,63 @@ class OverlapSettings(_Section):
     ] = 0.5
 
 
+class GeneralisedOverlapSettings(_Section):
+    """Generalised IoU, from -1 to 1, as evidence: cost = nats x (neutral - GIoU)."""
+
+    nats: Annotated[
+        float, Positive, about("Evidence a unit of generalised IoU carries", "nats")
+    ] = 5.0
+    neutral: Annotated[
+        float, Meta(ge=-1.0, le=1.0), about("Value that speaks neither for nor against the pair")
+    ] = 0.3
+
+
+class LabelSettings(_Section):
+    """Labels as evidence; a detection or track without label says nothing."""
+
+    agree_nats: Annotated[
+        float, NonNegative, about("Evidence for the pair if its labels agree", "nats")
+    ] = 0.0
+    differ_nats: Annotated[
+        float, NonNegative, about("Evidence against it if they differ", "nats")
+    ] = 3.0
+
+
+class AppearanceSettings(_Section):
+    """Cosine similarity of embeddings as evidence: cost = nats x (neutral - cosine)."""
+
+    nats: Annotated[
+        float, Positive, about("Evidence a unit of cosine similarity carries", "nats")
+    ] = 6.0
+    neutral: Annotated[
+        float, Meta(ge=-1.0, le=1.0), about("Cosine that speaks neither for nor against the pair")
+    ] = 0.5
+    memory: Annotated[
+        float,
+        Meta(ge=0.0, lt=1.0),
+        about("Weight of the past in a track's running mean embedding, at each detection"),
+    ] = 0.9
+
+
 class CostSettings(_Section):
     """What a pair costs, in nats: minus the log-likelihood ratio of 'same' against 'new'."""
 
     terms: Annotated[
-        tuple[Literal["auto", "overlap", "mahalanobis", "likelihood"], ...],
+        tuple[str, ...],
         Meta(min_length=1),
         about(
-            "Terms that are added: overlap (boxes), mahalanobis (half of d² minus the gate), "
-            "likelihood (half of d², log-volume of S, new_density); auto is overlap for boxes, "
-            "likelihood for points if new_density is set, else mahalanobis",
+            "Terms that are added: overlap or generalised-overlap (boxes), mahalanobis (half of "
+            "d² minus the gate), likelihood (half of d², log-volume of S, new_density), label, "
+            "appearance (embedding_* columns), or the name of a registered function; auto is "
+            "overlap for boxes, likelihood for points if new_density is set, else mahalanobis",
             "",
             "Sittler 1964; Blackman and Popoli 1999",
         ),
     ] = ("auto",)
     overlap: OverlapSettings = OverlapSettings()
+    generalised_overlap: GeneralisedOverlapSettings = GeneralisedOverlapSettings()
+    label: LabelSettings = LabelSettings()
+    appearance: AppearanceSettings = AppearanceSettings()
     new_density: Annotated[
         PositiveFloat | None,
         about(

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from tracker.log.model import Kind
-from tracker.simulation.delivery import Frames
+from tracker.simulation.sensors.delivery import Frames
 from tracker.simulation.sequence import Detections, TrueObjects
 from tracker.simulation.tables import Columns, Words, named
 

@@ -19,8 +19,8 @@ from tracker.log.model import (
     Truth,
     box_centre,
 )
-from tracker.simulation.delivery import Frames
-from tracker.simulation.projection import Pose
+from tracker.simulation.sensors.delivery import Frames
+from tracker.simulation.sensors.projection import Pose
 from tracker.simulation.settings import SceneSettings
 from tracker.simulation.tables import Columns, csv_bytes
 

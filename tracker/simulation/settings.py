@@ -19,14 +19,14 @@ class Section(Struct, frozen=True, forbid_unknown_fields=True, kw_only=True):
     """Base of all sections: immutable, no unknown names."""
 
 
-class ClockSettings(Section):
+class ClockSettings(Section, frozen=True):
     """How long and how often the sensor looks."""
 
     seconds: Annotated[float, Positive, about("Length of the sequence", "s")] = 20.0
     frame_rate_hz: Annotated[float, Positive, about("Frames (scans) a second", "1/s")] = 12.5
 
 
-class DetectionSettings(Section):
+class DetectionSettings(Section, frozen=True):
     """Which present objects are detected.
 
     P_D = probability x v x h, where v rises with the visible share as a logistic curve
@@ -57,7 +57,7 @@ class DetectionSettings(Section):
     ] = 0.0
 
 
-class NoiseSettings(Section):
+class NoiseSettings(Section, frozen=True):
     """Gaussian measurement noise of boxes, in box scales (square root of width times height)."""
 
     position_sigma: Annotated[
@@ -76,7 +76,7 @@ class NoiseSettings(Section):
     ] = 0.0
 
 
-class ScoreSettings(Section):
+class ScoreSettings(Section, frozen=True):
     """Scores: 1 / (1 + exp(-g)) of a Gaussian g, one for objects and one for clutter."""
 
     object_mean: Annotated[float, about("Mean of g for objects in full view", "logits")] = 1.6
@@ -88,7 +88,7 @@ class ScoreSettings(Section):
     clutter_sigma: Annotated[float, NonNegative, about("Its standard deviation", "logits")] = 0.8
 
 
-class LabelSettings(Section):
+class LabelSettings(Section, frozen=True):
     """Labels and how often they are wrong."""
 
     error_probability: Annotated[
@@ -98,7 +98,7 @@ class LabelSettings(Section):
     ] = 0.03
 
 
-class EmbeddingSettings(Section):
+class EmbeddingSettings(Section, frozen=True):
     """Appearance vectors of length 1 with a stated separability.
 
     The cosine of two detections of one object is `same_cosine` on average with a standard
@@ -114,7 +114,7 @@ class EmbeddingSettings(Section):
     ] = 0.7
 
 
-class DeliverySettings(Section):
+class DeliverySettings(Section, frozen=True):
     """How frames get lost, are mistimed and arrive late."""
 
     outages_per_minute: Annotated[
@@ -142,7 +142,7 @@ class DeliverySettings(Section):
     ] = 0.5
 
 
-class SceneSettings(Section):
+class SceneSettings(Section, frozen=True):
     """What every scene has."""
 
     clock: ClockSettings = ClockSettings()

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import zlib
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -57,7 +58,7 @@ def correlated_normals(
     ends = np.cumsum(np.bincount(place))
     previous = np.empty(len(order), np.int64)
     previous[order[1:]] = order[:-1]
-    for start, stop in zip(ends[:-1], ends[1:], strict=True):
+    for start, stop in pairwise(ends.tolist()):
         now = by_place[start:stop]
         before = previous[now]
         kept = np.exp(-(time[now] - time[before]) / correlation_seconds)[:, None]
@@ -71,7 +72,7 @@ def happens(probability: Floats, normals: Floats) -> NDArray[np.bool_]:
 
 
 def poisson_times(rate: float, begin: float, end: float, rng: np.random.Generator) -> Floats:
-    """Sorted times of a Poisson process, at least one; a later `end` adds times and changes none."""
+    """Times of a Poisson process, at least one; a later `end` adds some and changes none."""
     times = [begin + rng.exponential(1.0 / rate)]
     while times[-1] < end:
         times.append(times[-1] + rng.exponential(1.0 / rate))

@@ -27,7 +27,7 @@ Columns = dict[str, Column]
 
 def rounded(values: Floats, decimals: int) -> Floats:
     """Rounded, and without a negative zero."""
-    return np.round(values, decimals) + 0.0
+    return np.asarray(np.round(values, decimals) + 0.0, dtype=np.float64)
 
 
 def named(names: tuple[str, ...], values: Floats | NDArray[np.float32]) -> Columns:

@@ -13,9 +13,9 @@ from numpy.typing import NDArray
 
 from tracker.errors import OutputError, UsageError
 from tracker.log.model import Floats, Kind
-from tracker.simulation.camera import CameraSceneSettings
-from tracker.simulation.obstacles import obstacle_boxes
-from tracker.simulation.projection import Pose, project
+from tracker.simulation.sensors.camera import CameraSceneSettings
+from tracker.simulation.sensors.obstacles import obstacle_boxes
+from tracker.simulation.sensors.projection import Pose, project
 from tracker.simulation.sequence import SimulatedSequence
 
 Image = NDArray[np.uint8]
@@ -26,6 +26,7 @@ TILE_M = 2.0
 GROUND_X_M, GROUND_Y_M = (-60.0, 60.0), (6.0, 120.0)
 TOP_VIEW_PX = 720
 SKY, GROUND, STONE, OBSTACLE = (216, 205, 196), (128, 132, 134), (140, 145, 148), (96, 104, 108)
+BAR = (250, 250, 250)
 
 
 def render(sequence: SimulatedSequence) -> Iterator[Image]:
@@ -196,7 +197,11 @@ class _TopView:
         for k in range(rows.start, rows.stop):
             rng = np.random.default_rng(int(objects.object[k]))
             colour = tuple(int(value) for value in rng.integers(40, 230, 3))
-            cv2.fillConvexPoly(picture, self._pixels(self._outline(k)), colour, cv2.LINE_AA)
+            corners = self._pixels(self._outline(k))
+            cv2.fillConvexPoly(picture, corners, colour, cv2.LINE_AA)
+            if objects.shape is not None:  # a bar across the front
+                front = (corners[0].tolist(), corners[1].tolist())
+                cv2.line(picture, *front, BAR, 2, cv2.LINE_AA)
         return picture
 
     def _outline(self, k: int) -> Floats:

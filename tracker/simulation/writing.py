@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import tomllib
+from collections.abc import Collection
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
 
@@ -17,6 +18,17 @@ from tracker.simulation.sequence import SimulatedSequence
 from tracker.simulation.tables import csv_bytes
 
 HOW_MADE = "simulated"  # the table of sequence.toml that marks a folder as ours
+WRITTEN = frozenset(
+    {
+        FACTS_FILE,
+        "camera.csv",
+        "detections.csv",
+        "detections_oriented.csv",
+        "detections_polar.csv",
+        "truth.csv",
+        "truth_oriented.csv",
+    }
+)
 
 
 def software_version() -> str:
@@ -60,24 +72,28 @@ def _value(value: object) -> str:
     return msgspec.json.encode(value).decode()
 
 
-def write_sequence(sequence: SimulatedSequence, folder: Path) -> None:
+def write_sequence(
+    sequence: SimulatedSequence, folder: Path, *, replacing: Collection[str] = ()
+) -> None:
     """Write the folder, complete or not at all; an earlier simulation there is replaced.
+
+    `replacing` names further files (a video) that may be there and go with it.
 
     Raises OutputError where it cannot be written or holds anything that is not of a simulation.
     """
     files = sequence_files(sequence)
-    _check_replaceable(folder)
+    _check_replaceable(folder, WRITTEN.union(replacing))
     with atomic_folder(folder, marker=FACTS_FILE) as working:
         for name, data in files.items():
             (working / name).write_bytes(data)
 
 
-def _check_replaceable(folder: Path) -> None:
+def _check_replaceable(folder: Path, ours: Collection[str]) -> None:
     """A folder of someone's own log also has a sequence.toml: look closer before replacing it."""
     if not folder.is_dir():
         return
     names = {item.name for item in folder.iterdir()}
-    strange = sorted(names - WRITTEN)
+    strange = sorted(names.difference(ours))
     if strange:
         raise OutputError(
             f"holds a file that no simulation wrote ({strange[0]}); choose another --out",
@@ -96,14 +112,3 @@ def _is_simulated(facts: Path) -> bool:
         return HOW_MADE in tomllib.loads(facts.read_text(encoding="utf-8"))
     except (OSError, UnicodeDecodeError, tomllib.TOMLDecodeError):
         return False
-
-
-WRITTEN = {
-    FACTS_FILE,
-    "camera.csv",
-    "detections.csv",
-    "detections_oriented.csv",
-    "detections_polar.csv",
-    "truth.csv",
-    "truth_oriented.csv",
-}

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from tracker.simulation.radar import HarbourSettings, scan_harbour
 from tracker.simulation.scenes.scene import Scene
+from tracker.simulation.sensors.radar import HarbourSettings, scan_harbour
 
 SCENE = Scene(
     name="harbour",

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from tracker.simulation.camera import CameraSceneSettings, film
 from tracker.simulation.scenes.scene import Scene
+from tracker.simulation.sensors.camera import CameraSceneSettings, film
 from tracker.simulation.settings import DeliverySettings
 
 SCENE = Scene(

@@ -2,11 +2,11 @@
 
 from __future__ import annotations
 
-from tracker.simulation.camera import CameraSceneSettings, film
-from tracker.simulation.clutter import ClutterSettings
 from tracker.simulation.scenes.scene import Scene
+from tracker.simulation.sensors.camera import CameraSceneSettings, film
+from tracker.simulation.sensors.clutter import ClutterSettings
 from tracker.simulation.settings import DetectionSettings
-from tracker.simulation.site import TrafficSettings
+from tracker.simulation.world.site import TrafficSettings
 
 SCENE = Scene(
     name="rush",

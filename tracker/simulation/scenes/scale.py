@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from tracker.simulation.field import ScaleSettings, watch_field
 from tracker.simulation.scenes.scene import Scene
+from tracker.simulation.sensors.field import ScaleSettings, watch_field
 
 SCENE = Scene(
     name="scale",

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from tracker.simulation.camera import CameraSceneSettings, film
 from tracker.simulation.scenes.scene import Scene
-from tracker.simulation.sway import SwaySettings
+from tracker.simulation.sensors.camera import CameraSceneSettings, film
+from tracker.simulation.sensors.sway import SwaySettings
 
 SCENE = Scene(
     name="sway",

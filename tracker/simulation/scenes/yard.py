@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from tracker.simulation.lidar import YardSettings, scan_yard
 from tracker.simulation.scenes.scene import Scene
+from tracker.simulation.sensors.lidar import YardSettings, scan_yard
 
 SCENE = Scene(
     name="yard",

@@ -1,0 +1,1 @@
+"""What the sensors of Tern Quay make of it: view, detection, noise, clutter, delivery."""

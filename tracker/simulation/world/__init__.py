@@ -1,0 +1,1 @@
+"""What happens at Tern Quay: who comes and how they move."""
