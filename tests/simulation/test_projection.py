@@ -5,7 +5,13 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from tracker.simulation.sensors.projection import CameraSettings, Pose, bounding_boxes, cuboid, project
+from tracker.simulation.sensors.projection import (
+    CameraSettings,
+    Pose,
+    bounding_boxes,
+    cuboid,
+    project,
+)
 
 CAMERA = CameraSettings(
     image_width=1280, image_height=720, focal_px=1000.0, mast_height_m=8.0, tilt_degrees=30.0

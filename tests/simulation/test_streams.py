@@ -21,7 +21,10 @@ def test_same_name_same_numbers_and_another_name_others():
 
 def test_streams_of_different_names_are_uncorrelated():
     # Under independence r is normal with deviation 1 / sqrt(n); 4 deviations, seeded.
-    a, b = Streams(5)("clutter").standard_normal(40_000), Streams(5)("noise").standard_normal(40_000)
+    a, b = (
+        Streams(5)("clutter").standard_normal(40_000),
+        Streams(5)("noise").standard_normal(40_000),
+    )
     assert abs(np.corrcoef(a, b)[0, 1]) < 4 / np.sqrt(40_000)
 
 

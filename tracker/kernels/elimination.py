@@ -165,9 +165,11 @@ def _backward(
         first, last = weights.start[i], weights.start[i + 1]
         size = 1 << plan.during[t]
         after[1 << plan.before[t + 1] : size] = 0.0
+        closing = False
         for e in range(first, last):
             j = weights.column[e]
             if plan.closes[j] == t:
+                closing = True
                 bit = 1 << plan.slot[j]
                 new[j] = 0.0
                 for used in range(size):
@@ -198,7 +200,8 @@ def _backward(
                     pair[e] += share
                 else:
                     miss[i] += share
-                _count_unused(weights, plan, t, i, then, share, new)
+                if closing:
+                    _count_unused(weights, plan, t, i, then, share, new)
             after[used] = follow
         miss[i] /= total
         for e in range(first, last):

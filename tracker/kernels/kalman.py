@@ -1,7 +1,7 @@
-"""Kalman filter for positions and their rates: batches of states, updated in place.
+"""Kalman filter for positions and their rates: batches of states, changed in place.
 
 The state of d measured components is (p_1 … p_d, v_1 … v_d), so H = [I 0] and
-F = [[I, T I], [0, I]]. The covariance is a full matrix, kept exactly symmetric, in blocks:
+F = [[I, T I], [0, I]]. The covariance is a full matrix, symmetric to the last bit, in blocks:
 
     P = [ A   B ]     A: positions,  B: positions by rates,  C: rates
         [ Bᵀ  C ]
@@ -13,15 +13,21 @@ kernels then touch nothing but the diagonals. The results are the same to the la
 
 from __future__ import annotations
 
-from collections.abc import Callable
-
 import numpy as np
 from numba import njit
 from numpy.typing import NDArray
 
-Update = Callable[[NDArray, NDArray, NDArray, NDArray, NDArray, bool], int]
-
 UPDATE_OK = -1  # otherwise the status is the number of the first state that failed
+
+# Where a position is known far better than what a coast adds to it (to 1e-6, then 1000 s at a
+# speed known to 1), P_pp is T² P_vv plus something below its last bit, and rounding alone makes P
+# indefinite. A prediction therefore grows variances by this part: many times what rounding can
+# take, yet not 2e-8 in a million predictions.
+ROUNDING_ALLOWANCE = 64 * 2.0**-52
+
+# Covariances between axes that die away are cut here, before their products become subnormal
+# numbers, with which the processor is fifty times slower.
+NEGLIGIBLE = 1e-150
 
 
 @njit(cache=True)
@@ -42,41 +48,90 @@ def predict_constant_velocity(
     for i in range(len(mean)):
         x = mean[i]
         p = covariance[i]
-        # x ← F x
         for a in range(d):
+            # x ← F x
             x[a] += t * x[d + a]
-        if coupled:
-            _spread_blocks(p, t, d)
-        else:
-            for a in range(d):
-                v = d + a
-                p[a, a] = p[a, a] + t * (p[a, v] + p[a, v]) + t * t * p[v, v]
-                p[a, v] = p[a, v] + t * p[v, v]
+            # P ← F P Fᵀ:  A ← A + T (B + Bᵀ + T C),  B ← B + T C,  Bᵀ ← Bᵀ + T C
+            for b in range(0 if coupled else a, d if coupled else a + 1):
+                c = t * p[d + a, d + b]
+                p[a, b] += t * (p[a, d + b] + p[d + a, b] + c)
+                p[a, d + b] += c
+                p[d + a, b] += c
         # P ← P + Q,  Q = q [T³/3, T²/2; T²/2, T] on each axis
         for a in range(d):
-            q = spectral_density[i, a]
-            p[a, a] += q * t * t * t / 3.0
-            p[a, d + a] += q * t * t / 2.0
+            q = spectral_density[i, a] * t
+            p[a, a] += q * t * t / 3.0 + ROUNDING_ALLOWANCE * p[a, a]
+            p[a, d + a] += q * t / 2.0
             p[d + a, a] = p[a, d + a]
-            p[d + a, d + a] += q * t
+            p[d + a, d + a] += q + ROUNDING_ALLOWANCE * p[d + a, d + a]
 
 
 @njit(cache=True)
-def _spread_blocks(p: NDArray[np.float64], t: float, d: int) -> None:
-    """P ← F P Fᵀ:  A ← A + T (B + Bᵀ) + T² C,  B ← B + T C."""
-    for a in range(d):
-        for b in range(a, d):
-            block = p[a, b] + t * (p[a, d + b] + p[b, d + a]) + t * t * p[d + a, d + b]
-            p[a, b] = block
-            p[b, a] = block
-    for a in range(d):
-        for b in range(d):
-            block = p[a, d + b] + t * p[d + a, d + b]
-            p[a, d + b] = block
-            p[d + b, a] = block
+def update_constant_velocity(
+    mean: NDArray[np.float64],
+    covariance: NDArray[np.float64],
+    pairing: NDArray[np.int64],
+    z: NDArray[np.float64],
+    variance: NDArray[np.float64],
+    coupled: bool,
+) -> int:
+    """Correct states by measurements, in place, in Joseph form.
+
+    mean, covariance : (n, 2d), (n, 2d, 2d).   pairing : (n,) the measurement that corrects each
+    state, -1 for none.   z, variance : (m, d) measurements and the diagonals of R.
+
+    Returns UPDATE_OK, or the number of the first state whose S is not positive definite; that
+    one is then half corrected, those behind it not at all.
+
+    As R is diagonal, the components of a measurement can be taken one after the other (Bierman
+    1977; from memory): same result, no matrix to invert. The s of component c is the c-th pivot
+    of S, so S is positive definite if and only if all of them are positive.
+    """
+    states = mean.shape[1]
+    d = states // 2
+    pc = np.zeros(states)
+    for i in range(len(pairing)):
+        j = pairing[i]
+        if j < 0:
+            continue
+        for c in range(d):
+            # h = e_c,  s = hᵀ P h + r,  gain = P h / s
+            r = variance[j, c]
+            s = covariance[i, c, c] + r
+            if not (0.0 < s < np.inf):
+                return i
+            inverse = 1.0 / s
+            # x ← x + gain (z − hᵀ x)
+            step = (z[j, c] - mean[i, c]) * inverse
+            # P ← (I − gain hᵀ) P (I − gain hᵀ)ᵀ + gain r gainᵀ  (Joseph), multiplied out:
+            # P_ab ← P_ab − P_ac P_cb / s  off row and column c, and on them
+            # P_cb ← (r / s) P_cb,  as 1 − gain_c = r / s, which no subtraction can spoil
+            keep = r * inverse
+            if coupled:
+                for a in range(states):
+                    pc[a] = covariance[i, c, a] if abs(covariance[i, c, a]) > NEGLIGIBLE else 0.0
+                for a in range(states):
+                    mean[i, a] += pc[a] * step
+                for a in range(states):
+                    for b in range(states):
+                        covariance[i, a, b] -= pc[a] * pc[b] * inverse
+                for a in range(states):
+                    covariance[i, a, c] = pc[a] * keep
+                    covariance[i, c, a] = covariance[i, a, c]
+            else:
+                v = d + c
+                cross = covariance[i, c, v]
+                mean[i, c] += covariance[i, c, c] * step
+                mean[i, v] += cross * step
+                covariance[i, v, v] -= cross * cross * inverse
+                covariance[i, c, c] *= keep
+                covariance[i, c, v] = cross * keep
+                covariance[i, v, c] = cross * keep
+    return UPDATE_OK
 
 
-@njit(cache=True)
+# Inlined where it is called: the call would cost more than the work.
+@njit(cache=True, inline="always")
 def squared_mahalanobis(
     mean: NDArray[np.float64],
     covariance: NDArray[np.float64],
@@ -91,146 +146,39 @@ def squared_mahalanobis(
 
     mean, covariance : (n, s), (n, s, s).   z, variance : (m, d), (m, d) diagonals of R.
     scratch : (d + 2, d).
-
-    S = H P Hᵀ + R is factored as L D Lᵀ, which needs no roots. Rows are given by number, not as
-    slices: a slice costs more than the arithmetic.
     """
     d = z.shape[1]
     d2 = 0.0
     determinant = 1.0
+    log_determinant = 0.0
     for a in range(d):
-        # (L D) into scratch[a], 1 / D into scratch[d], y = L⁻¹ (z − H x) into scratch[d + 1]
-        y = z[j, a] - mean[i, a]
+        # S = A + R = L D Lᵀ, L unit lower: the Cholesky factorisation without its roots.
+        # L y = z − H x,  d² = Σ y_a² / D_a,  ln det S = Σ ln D_a
+        # scratch: L in the first d rows, then 1 / D, then y
         before = a if coupled else 0
         for b in range(before):
-            entry = covariance[i, a, b]
+            scaled = covariance[i, a, b]  # L_ab D_b
             for k in range(b):
-                entry -= scratch[a, k] * scratch[b, k] * scratch[d, k]
-            scratch[a, b] = entry
-            y -= entry * scratch[d, b] * scratch[d + 1, b]
+                scaled -= scratch[a, k] * scratch[b, k]
+            scratch[a, b] = scaled
+        y = z[j, a] - mean[i, a]
         pivot = covariance[i, a, a] + variance[j, a]
-        for k in range(before):
-            pivot -= scratch[a, k] * scratch[a, k] * scratch[d, k]
+        for b in range(before):
+            scaled = scratch[a, b]
+            scratch[a, b] = scaled * scratch[d, b]
+            pivot -= scratch[a, b] * scaled
+            y -= scratch[a, b] * scratch[d + 1, b]
         if not (0.0 < pivot < np.inf):
             return np.inf, np.inf
-        scratch[d, a] = 1.0 / pivot
+        inverse = 1.0 / pivot
+        scratch[d, a] = inverse
         scratch[d + 1, a] = y
+        d2 += y * y * inverse
         determinant *= pivot
-        d2 += y * y / pivot  # d² = yᵀ D⁻¹ y,  det S = Π D
-    return d2, np.log(determinant)
-
-
-@njit(cache=True)
-def _correct_axis(
-    mean: NDArray[np.float64],
-    covariance: NDArray[np.float64],
-    i: int,
-    c: int,
-    z: float,
-    r: float,
-) -> bool:
-    """Joseph update of one axis of state i by its measured component; False if s ≤ 0."""
-    v = mean.shape[1] // 2 + c
-    p_cc = covariance[i, c, c]
-    p_cv = covariance[i, c, v]
-    p_vv = covariance[i, v, v]
-    innovation_variance = p_cc + r
-    if not (0.0 < innovation_variance < np.inf):
-        return False
-    inverse = 1.0 / innovation_variance
-    gain_c = p_cc * inverse
-    gain_v = p_cv * inverse
-    innovation = z - mean[i, c]
-    mean[i, c] += gain_c * innovation
-    mean[i, v] += gain_v * innovation
-    rest_c = p_cc - gain_c * p_cc - gain_c * r
-    rest_v = p_cv - gain_v * p_cc - gain_v * r
-    # Both halves of the symmetric entry, averaged as in the coupled update.
-    upper = (p_cv - gain_c * p_cv) - rest_c * gain_v
-    lower = (p_cv - gain_v * p_cc) - rest_v * gain_c
-    cross = 0.5 * (lower + upper)
-    covariance[i, c, c] = (p_cc - gain_c * p_cc) - rest_c * gain_c
-    covariance[i, c, v] = cross
-    covariance[i, v, c] = cross
-    covariance[i, v, v] = (p_vv - gain_v * p_cv) - rest_v * gain_v
-    return True
-
-
-def _update_kernel(d: int) -> Update:
-    """Build the update kernel for d measured components; a fixed d lets the compiler unroll."""
-    s = 2 * d
-
-    @njit(cache=True)
-    def update(
-        mean: NDArray[np.float64],
-        covariance: NDArray[np.float64],
-        pairing: NDArray[np.int64],
-        z: NDArray[np.float64],
-        variance: NDArray[np.float64],
-        coupled: bool,
-    ) -> int:
-        """Correct states by measurements, in place, in Joseph form.
-
-        mean, covariance : (n, 2d), (n, 2d, 2d).   pairing : (n,) the measurement that corrects
-        each state, -1 for none.   z, variance : (m, d) measurements and the diagonals of R.
-
-        R is diagonal, so the components are taken one after the other as scalars (Bierman 1977),
-        which gives the same posterior without factoring S.
-
-        Returns UPDATE_OK, or the number of the first state whose innovation variance is not
-        positive; that state is left half-corrected and those behind it are not touched.
-        """
-        p = np.empty((s, s))
-        column = np.empty(s)
-        gain = np.empty(s)
-        rest = np.empty(s)
-        for i in range(len(pairing)):
-            j = pairing[i]
-            if j < 0:
-                continue
-            if not coupled:
-                for c in range(d):
-                    if not _correct_axis(mean, covariance, i, c, z[j, c], variance[j, c]):
-                        return i
-                continue
-            for a in range(s):
-                for b in range(s):
-                    p[a, b] = covariance[i, a, b]
-            for c in range(d):
-                r = variance[j, c]
-                innovation_variance = p[c, c] + r
-                if not (0.0 < innovation_variance < np.inf):
-                    return i
-                # K = P hᵀ / s
-                inverse = 1.0 / innovation_variance
-                for a in range(s):
-                    column[a] = p[c, a]
-                    gain[a] = column[a] * inverse
-                # x ← x + K (z − h x)
-                innovation = z[j, c] - mean[i, c]
-                for a in range(s):
-                    mean[i, a] += gain[a] * innovation
-                # P ← (I − K h) P (I − K h)ᵀ + K r Kᵀ (Joseph): a sum of squares, so rounding
-                # cannot make it indefinite as it can P − K s Kᵀ
-                for a in range(s):
-                    rest[a] = column[a] - gain[a] * column[c] - gain[a] * r
-                for a in range(s):
-                    for b in range(s):
-                        p[a, b] = (p[a, b] - gain[a] * column[b]) - rest[a] * gain[b]
-            for a in range(s):
-                covariance[i, a, a] = p[a, a]
-                for b in range(a):
-                    value = 0.5 * (p[a, b] + p[b, a])
-                    covariance[i, a, b] = value
-                    covariance[i, b, a] = value
-        return UPDATE_OK
-
-    return update
-
-
-update_two = _update_kernel(2)
-update_four = _update_kernel(4)
-UPDATE_OF_DIMENSION = {2: update_two, 4: update_four}
+        if not (1e-150 < determinant < 1e150):  # one logarithm as a rule, more at the extremes
+            log_determinant += np.log(determinant)
+            determinant = 1.0
+    return d2, log_determinant + np.log(determinant)
 
 
 @njit(cache=True)

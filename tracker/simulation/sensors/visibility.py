@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -31,8 +33,8 @@ def visible_share(
     """
     covering = boxes if blockers is None else blockers
     share = np.ones(len(boxes))
-    starts = np.flatnonzero(np.diff(frame, prepend=frame[0] - 1 if len(frame) else 0))
-    for start, stop in zip(starts, [*starts[1:], len(frame)], strict=True):
+    starts = np.unique(frame, return_index=True)[1].tolist()
+    for start, stop in pairwise([*starts, len(frame)]):
         rows = slice(start, stop)
         share[rows] = _one_frame(boxes[rows], covering[rows], depth[rows], bounds)
     return share

@@ -1,0 +1,95 @@
+"""Counts of one or more sequences and the ratios made of them.
+
+Overall figures come from summed counts, never from averaged ratios. A ratio whose denominator is
+zero is None: an empty sequence has no precision, not one of 0 or 1.
+"""
+
+from __future__ import annotations
+
+from dataclasses import asdict, dataclass, fields
+from typing import Any
+
+
+@dataclass(frozen=True, slots=True)
+class Counts:
+    """What is counted in a sequence (CLEAR MOT: Bernardin and Stiefelhagen 2008; identity:
+    Ristani et al. 2016)."""
+
+    frames: int = 0
+    objects: int = 0  # different annotated objects
+    truth_boxes: int = 0  # annotated rows that are scored
+    track_boxes: int = 0  # reported rows that are scored
+    matches: int = 0  # paired rows, switches included
+    switches: int = 0
+    false_positives: int = 0
+    misses: int = 0
+    fragmentations: int = 0
+    mostly_tracked: int = 0  # objects paired in at least 80% of their frames
+    partially_tracked: int = 0
+    mostly_lost: int = 0  # less than 20%
+    distance_sum: float = 0.0  # of paired rows
+    identity_matches: int = 0  # IDTP
+    identity_false_positives: int = 0  # IDFP
+    identity_misses: int = 0  # IDFN
+
+    def __add__(self, other: Counts) -> Counts:
+        return Counts(
+            *(getattr(self, item.name) + getattr(other, item.name) for item in fields(Counts))
+        )
+
+
+@dataclass(frozen=True, slots=True)
+class Scores:
+    """Scores of one sequence or of several together; ratios are between 0 and 1, or None."""
+
+    counts: Counts
+
+    @property
+    def mota(self) -> float | None:
+        """1 − (misses + false positives + switches) / annotated rows; may be negative."""
+        c = self.counts
+        wrong = _ratio(c.misses + c.false_positives + c.switches, c.truth_boxes)
+        return None if wrong is None else 1.0 - wrong
+
+    @property
+    def motp(self) -> float | None:
+        """Mean *distance* of paired rows, lower is better: 1 − IoU of boxes, units of points."""
+        return _ratio(self.counts.distance_sum, self.counts.matches)
+
+    @property
+    def idf1(self) -> float | None:
+        """2 IDTP / (annotated + reported rows)."""
+        c = self.counts
+        return _ratio(2 * c.identity_matches, c.truth_boxes + c.track_boxes)
+
+    @property
+    def idp(self) -> float | None:
+        """Identity precision, IDTP / reported rows."""
+        return _ratio(self.counts.identity_matches, self.counts.track_boxes)
+
+    @property
+    def idr(self) -> float | None:
+        """Identity recall, IDTP / annotated rows."""
+        return _ratio(self.counts.identity_matches, self.counts.truth_boxes)
+
+    @property
+    def precision(self) -> float | None:
+        """Paired rows / reported rows."""
+        return _ratio(self.counts.matches, self.counts.track_boxes)
+
+    @property
+    def recall(self) -> float | None:
+        """Paired rows / annotated rows."""
+        return _ratio(self.counts.matches, self.counts.truth_boxes)
+
+    def as_dict(self) -> dict[str, Any]:
+        """All scores and counts by name, as `margent evaluate --json` prints them."""
+        ratios = {name: getattr(self, name) for name in RATIOS}
+        return ratios | asdict(self.counts)
+
+
+RATIOS = ("mota", "motp", "idf1", "idp", "idr", "precision", "recall")
+
+
+def _ratio(part: float, whole: float) -> float | None:
+    return part / whole if whole else None

@@ -1,0 +1,55 @@
+"""Scores as a table for people."""
+
+from __future__ import annotations
+
+from tracker.evaluation.evaluate import Evaluation
+from tracker.evaluation.scores import Scores
+
+CAUTION = (
+    "Scores describe these sequences and this truth only. Tracks can be wrong, and tracks of "
+    "people are personal data: follow the law and the licensed practice that apply where you are."
+)
+LEGEND = (
+    "MOTP is a distance (1 - IoU for boxes): lower is better. MT/PT/ML: objects tracked in at "
+    "least 80%, in between, in less than 20% of their frames."
+)
+
+# Heading, and how a cell is made.
+COLUMNS = (
+    ("MOTA", lambda s: _percent(s.mota)),
+    ("IDF1", lambda s: _percent(s.idf1)),
+    ("IDP", lambda s: _percent(s.idp)),
+    ("IDR", lambda s: _percent(s.idr)),
+    ("prec.", lambda s: _percent(s.precision)),
+    ("recall", lambda s: _percent(s.recall)),
+    ("MOTP", lambda s: "-" if s.motp is None else f"{s.motp:.3f}"),
+    ("FP", lambda s: str(s.counts.false_positives)),
+    ("misses", lambda s: str(s.counts.misses)),
+    ("switch", lambda s: str(s.counts.switches)),
+    ("frag", lambda s: str(s.counts.fragmentations)),
+    (
+        "MT/PT/ML",
+        lambda s: f"{s.counts.mostly_tracked}/{s.counts.partially_tracked}/{s.counts.mostly_lost}",
+    ),
+)
+
+
+def scores_table(evaluation: Evaluation) -> str:
+    """One line a sequence and, for several, one overall."""
+    rows: list[tuple[str, Scores]] = list(evaluation.sequences.items())
+    if len(rows) > 1:
+        rows.append(("OVERALL", evaluation.overall))
+    table = [["sequence", *(heading for heading, _ in COLUMNS)]]
+    table += [[name, *(cell(scores) for _, cell in COLUMNS)] for name, scores in rows]
+    widths = [max(len(line[k]) for line in table) for k in range(len(table[0]))]
+    lines = []
+    for line in table:
+        first = line[0].ljust(widths[0])
+        rest = (text.rjust(width) for text, width in zip(line[1:], widths[1:], strict=True))
+        lines.append("  ".join((first, *rest)).rstrip())
+    lines.insert(1, "-" * max(len(line) for line in lines))
+    return "\n".join(lines)
+
+
+def _percent(value: float | None) -> str:
+    return "-" if value is None else f"{100 * value:.1f}%"
