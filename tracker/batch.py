@@ -6,7 +6,7 @@ from collections import Counter
 from collections.abc import Iterator
 from concurrent.futures import ProcessPoolExecutor
 from concurrent.futures.process import BrokenProcessPool
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from multiprocessing import get_context
 from pathlib import Path
 from typing import Any
@@ -26,6 +26,7 @@ class Outcome:
 
     log: Path
     folder: Path
+    name: str | None = None  # of the run, where the log's own name would not tell it apart
     facts: dict[str, Any] = field(default_factory=dict)
     error: MargentError | None = None
 
@@ -48,7 +49,8 @@ def associate_logs(
     """
     folders = run_folders(logs, out)
     jobs = [
-        (Outcome(log, folder), settings, reading) for log, folder in zip(logs, folders, strict=True)
+        (Outcome(log, folder, folder.name if len(logs) > 1 else None), settings, reading)
+        for log, folder in zip(logs, folders, strict=True)
     ]
     if workers == 1 or len(jobs) == 1:
         yield from (_associate_one(*job, watch) for job in jobs)
@@ -98,6 +100,8 @@ def _associate_one(
 ) -> Outcome:
     try:
         log = read_log(outcome.log, frame_rate_hz=settings.time.frame_rate_hz, **reading)
+        if outcome.name is not None:
+            log = replace(log, name=outcome.name)
         outcome.facts = associate_log(log, settings, outcome.folder, watch=watch)
     except MargentError as error:
         outcome.error = error

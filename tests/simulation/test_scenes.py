@@ -232,3 +232,17 @@ def test_wrong_calls_are_refused():
         simulate("harbour", seed=1, settings=settings("harbour", "radar.nearest_m=5000"))
     with pytest.raises(UsageError, match="not one frame would be delivered"):
         short("forecourt", "delivery.drop_probability=1")
+
+
+@pytest.mark.parametrize(
+    ("scene", "change"),
+    [
+        ("scale", "drift.objects=10000000"),
+        ("forecourt", "clock.frame_rate_hz=1e9"),
+        ("fog", "clutter.per_frame=1e8"),
+        ("harbour", "radar.clutter_per_scan=1e12"),
+    ],
+)
+def test_slips_of_the_pen_are_refused_before_memory_runs_out(scene, change):
+    with pytest.raises(UsageError, match="the limit is 5e"):
+        short(scene, change)

@@ -17,8 +17,12 @@ cv2 = pytest.importorskip("cv2")
 
 @pytest.mark.parametrize("scene", ["forecourt", "yard", "harbour", "scale"])
 def test_a_video_plays_and_has_every_frame(scene, tmp_path):
-    changes = {"forecourt": "clock.seconds=0.8", "harbour": "clock.seconds=20"}
-    chosen = settings(scene, changes.get(scene, "clock.seconds=1"))
+    changes = {
+        "forecourt": ("clock.seconds=0.8",),
+        "harbour": ("clock.seconds=20",),
+        "scale": ("clock.seconds=0.4", "drift.objects=50"),
+    }
+    chosen = settings(scene, *changes.get(scene, ("clock.seconds=1",)))
     sequence = simulate(scene, seed=1, settings=chosen)
     path = tmp_path / "scene.mp4"
     write_video(sequence, path, render(sequence))

@@ -111,8 +111,38 @@ def _plan(weights: Weights, across: Weights, limit: int) -> Plan:
 
 
 @njit(cache=True)
+def _choose(
+    weights: Weights,
+    plan: Plan,
+    t: int,
+    forward: NDArray[np.float64],
+    at: int,
+    work: NDArray[np.float64],
+) -> None:
+    """Weights of the sets after the choice of step t, before any column closes, into `work`.
+
+    at : where F_t begins in `forward`.
+    """
+    i = plan.order[t]
+    size = 1 << plan.before[t]
+    work[: 1 << plan.during[t]] = 0.0
+    for used in range(size):
+        work[used] = forward[at + used] * weights.miss[i]
+    for e in range(weights.start[i], weights.start[i + 1]):
+        bit = 1 << plan.slot[weights.column[e]]
+        weight = weights.pair[e]
+        for block in range(0, size, 2 * bit):  # the sets without the bit, run by run
+            for used in range(block, min(block + bit, size)):
+                work[used + bit] += forward[at + used] * weight
+
+
+@njit(cache=True)
 def _forward(weights: Weights, plan: Plan) -> tuple[NDArray[np.int64], NDArray[np.float64]]:
-    """F of all steps, one behind the other: where each begins, and the values."""
+    """F of all steps, one behind the other: where each begins, and the values.
+
+    Each F_t is scaled to a largest value of 1, and each B_t so that Σ F_t B_t = 1: probabilities
+    are ratios within a step, and a chain of a thousand tracks has more events than fit a float.
+    """
     rows = len(weights.miss)
     at = np.zeros(rows + 2, np.int64)
     for t in range(rows + 1):
@@ -121,30 +151,43 @@ def _forward(weights: Weights, plan: Plan) -> tuple[NDArray[np.int64], NDArray[n
     forward[0] = 1.0
     work = np.zeros(1 << plan.width)
     for t in range(rows):
+        _choose(weights, plan, t, forward, at[t], work)
         i = plan.order[t]
-        first, last = weights.start[i], weights.start[i + 1]
         size = 1 << plan.during[t]
-        work[:size] = 0.0
-        for used in range(1 << plan.before[t]):
-            value = forward[at[t] + used]
-            if value == 0.0:
-                continue
-            work[used] += value * weights.miss[i]
-            for e in range(first, last):
-                bit = 1 << plan.slot[weights.column[e]]
-                if not used & bit:
-                    work[used | bit] += value * weights.pair[e]
-        for e in range(first, last):
+        for e in range(weights.start[i], weights.start[i + 1]):
             j = weights.column[e]
-            if plan.closes[j] == t:
-                bit = 1 << plan.slot[j]
-                for used in range(size):
-                    if not used & bit:
-                        work[used] = work[used] * weights.new[j] + work[used | bit]
-                        work[used | bit] = 0.0
-        for used in range(1 << plan.before[t + 1]):
-            forward[at[t + 1] + used] = work[used]
+            if plan.closes[j] != t:
+                continue
+            bit = 1 << plan.slot[j]
+            for block in range(0, size, 2 * bit):
+                for used in range(block, block + bit):
+                    work[used] = work[used] * weights.new[j] + work[used + bit]
+                    work[used + bit] = 0.0
+        size = 1 << plan.before[t + 1]
+        largest = work[:size].max()
+        for used in range(size):
+            forward[at[t + 1] + used] = work[used] / largest
     return at, forward
+
+
+@njit(cache=True)
+def _reopen(weights: Weights, plan: Plan, t: int, after: NDArray[np.float64]) -> bool:
+    """B_{t+1} as a function of the sets in step t, in place; whether any column closes there."""
+    i = plan.order[t]
+    size = 1 << plan.during[t]
+    after[1 << plan.before[t + 1] : size] = 0.0
+    closing = False
+    for e in range(weights.start[i], weights.start[i + 1]):
+        j = weights.column[e]
+        if plan.closes[j] != t:
+            continue
+        closing = True
+        bit = 1 << plan.slot[j]
+        for block in range(0, size, 2 * bit):
+            for used in range(block, block + bit):
+                after[used + bit] = after[used]
+                after[used] *= weights.new[j]
+    return closing
 
 
 @njit(cache=True)
@@ -158,73 +201,46 @@ def _backward(
     new: NDArray[np.float64],
 ) -> None:
     """Probabilities of all choices, from the last step back to the first, into the outputs."""
-    after = np.zeros(1 << plan.width)  # B of the next step, over the sets of this one
+    after = np.zeros(1 << plan.width)
     after[0] = 1.0
+    work = np.zeros(1 << plan.width)
     for t in range(len(weights.miss) - 1, -1, -1):
         i = plan.order[t]
         first, last = weights.start[i], weights.start[i + 1]
-        size = 1 << plan.during[t]
-        after[1 << plan.before[t + 1] : size] = 0.0
-        closing = False
-        for e in range(first, last):
-            j = weights.column[e]
-            if plan.closes[j] == t:
-                closing = True
-                bit = 1 << plan.slot[j]
-                new[j] = 0.0
-                for used in range(size):
-                    if not used & bit:
-                        after[used | bit] = after[used]
-                        after[used] *= weights.new[j]
-        total = 0.0
-        for used in range(1 << plan.before[t]):
-            value = forward[at[t] + used]
-            if value == 0.0:
-                after[used] = 0.0
-                continue
-            follow = 0.0
-            for e in range(first - 1, last):  # first - 1 stands for being missed
-                then = used
-                share = weights.miss[i]
-                if e >= first:
+        closing = _reopen(weights, plan, t, after)
+        if closing:
+            _choose(weights, plan, t, forward, at[t], work)
+            for e in range(first, last):
+                if plan.closes[weights.column[e]] == t:
                     bit = 1 << plan.slot[weights.column[e]]
-                    if used & bit:
-                        continue
-                    then |= bit
-                    share = weights.pair[e]
-                share *= after[then]
-                follow += share
-                share *= value
-                total += share
-                if e >= first:
-                    pair[e] += share
-                else:
-                    miss[i] += share
-                if closing:
-                    _count_unused(weights, plan, t, i, then, share, new)
-            after[used] = follow
+                    unused = 0.0
+                    for block in range(0, 1 << plan.during[t], 2 * bit):
+                        for used in range(block, block + bit):
+                            unused += work[used] * after[used]
+                    new[weights.column[e]] = unused
+        size = 1 << plan.before[t]
+        total = 0.0
+        for used in range(size):
+            work[used] = weights.miss[i] * after[used]
+            total += forward[at[t] + used] * work[used]
+        miss[i] = total
+        for e in range(first, last):
+            bit = 1 << plan.slot[weights.column[e]]
+            weight = weights.pair[e]
+            share = 0.0
+            for block in range(0, size, 2 * bit):
+                for used in range(block, min(block + bit, size)):
+                    follow = weight * after[used + bit]
+                    work[used] += follow
+                    share += forward[at[t] + used] * follow
+            pair[e] = share
+            total += share
+        after[:size] = work[:size] / total
         miss[i] /= total
         for e in range(first, last):
             pair[e] /= total
             if plan.closes[weights.column[e]] == t:
                 new[weights.column[e]] /= total
-
-
-@njit(cache=True)
-def _count_unused(
-    weights: Weights,
-    plan: Plan,
-    step: int,
-    row: int,
-    used: int,
-    share: float,
-    new: NDArray[np.float64],
-) -> None:
-    """Add a share to the columns that close in this step without having been used."""
-    for e in range(weights.start[row], weights.start[row + 1]):
-        j = weights.column[e]
-        if plan.closes[j] == step and not used & (1 << plan.slot[j]):
-            new[j] += share
 
 
 @njit(cache=True)
@@ -237,23 +253,21 @@ def exact_marginals(
     and memory double with each.
 
     Returns the number that were open at once, and the (E,), (n,), (m,) probabilities; if the
-    number is above the limit they are all 0.
+    number is above the limit they mean nothing.
     """
     across, source = turned(weights)
     by_row = _plan(weights, across, limit)
     by_column = _plan(across, weights, min(limit, by_row.width))
     pair = np.zeros(len(weights.pair))
-    miss = np.zeros(len(weights.miss))
-    new = np.zeros(len(weights.new))
+    miss = np.ones(len(weights.miss))  # what has no candidates stays missed, or new
+    new = np.ones(len(weights.new))
     width = min(by_row.width, by_column.width)
     if width > limit:
         return width, pair, miss, new
     if by_row.width <= by_column.width:
-        new[:] = 1.0  # columns that are nobody's candidate stay new
         at, forward = _forward(weights, by_row)
         _backward(weights, by_row, at, forward, pair, miss, new)
         return width, pair, miss, new
-    miss[:] = 1.0
     at, forward = _forward(across, by_column)
     turned_pair = np.zeros(len(pair))
     _backward(across, by_column, at, forward, turned_pair, new, miss)

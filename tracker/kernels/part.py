@@ -17,7 +17,7 @@ import numpy as np
 from numba import njit
 from numpy.typing import NDArray
 
-from tracker.kernels.assignment import Assignment, Problem
+from tracker.kernels.assignment import Problem
 
 
 class Weights(NamedTuple):
@@ -66,19 +66,21 @@ def part_of(
 
 
 @njit(cache=True)
-def event_weights(problem: Problem, answer: Assignment) -> Weights:
-    """Factors of all decisions, from an optimal answer and its prices."""
+def event_weights(
+    problem: Problem, row_price: NDArray[np.float64], column_price: NDArray[np.float64]
+) -> Weights:
+    """Factors of all decisions, from the (n,) and (m,) prices of the optimum."""
     start, column, cost, miss, new = problem
     pair_weight = np.empty(len(column))
     miss_weight = np.empty(len(miss))
     new_weight = np.empty(len(new))
     for i in range(len(miss)):
-        u = answer.row_price[i]
+        u = row_price[i]
         miss_weight[i] = np.exp(-max(0.0, miss[i] - u))
         for e in range(start[i], start[i + 1]):
-            pair_weight[e] = np.exp(-max(0.0, cost[e] - u - answer.column_price[column[e]]))
+            pair_weight[e] = np.exp(-max(0.0, cost[e] - u - column_price[column[e]]))
     for j in range(len(new)):
-        new_weight[j] = np.exp(-max(0.0, new[j] - answer.column_price[j]))
+        new_weight[j] = np.exp(-max(0.0, new[j] - column_price[j]))
     return Weights(start, column, pair_weight, miss_weight, new_weight)
 
 

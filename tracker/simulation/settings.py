@@ -9,10 +9,22 @@ from typing import Annotated
 
 from msgspec import Meta, Struct
 
+from tracker.errors import UsageError
 from tracker.settings.schema import NonNegative, Positive, about
 
 Share = Meta(ge=0.0, le=1.0)
+ArrivalRate = Meta(gt=0.0, le=3000.0)  # a minute
+WarmUp = Meta(ge=0.0, le=3600.0)  # seconds
 NonNegativeFloat = Annotated[float, NonNegative]
+
+
+MOST_ROWS = 50_000_000  # a sequence with more is surely a slip, and would not fit in memory
+
+
+def check_rows(expected: float, what: str) -> None:
+    """Raise UsageError if a sequence would have more than `MOST_ROWS` of something."""
+    if expected > MOST_ROWS:
+        raise UsageError(f"that would be {expected:.3g} {what}; the limit is {MOST_ROWS:.0e}")
 
 
 class Section(Struct, frozen=True, forbid_unknown_fields=True, kw_only=True):
@@ -118,7 +130,7 @@ class DeliverySettings(Section, frozen=True):
     """How frames get lost, are mistimed and arrive late."""
 
     outages_per_minute: Annotated[
-        float, NonNegative, about("Rate at which outages begin", "1/min")
+        float, Meta(ge=0.0, le=600.0), about("Rate at which outages begin", "1/min")
     ] = 0.0
     outage_seconds: Annotated[
         float, Positive, about("Mean length of an outage (exponential)", "s")

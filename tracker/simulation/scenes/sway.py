@@ -11,10 +11,12 @@ SCENE = Scene(
     summary="mast camera in the wind: pan, tilt, roll and zoom move; camera.csv has the truth",
     settings=CameraSceneSettings(
         sway=SwaySettings(
-            pan_sigma_degrees=0.9,
-            tilt_sigma_degrees=0.45,
-            roll_sigma_degrees=0.5,
-            zoom_sigma=0.004,
+            pan_sigma_degrees=1.5,
+            tilt_sigma_degrees=0.8,
+            roll_sigma_degrees=0.8,
+            zoom_sigma=0.006,
+            frequency_hz=0.7,
+            bandwidth_hz=0.2,
         ),
     ),
     build=film,

@@ -9,7 +9,7 @@ from msgspec import Meta
 
 from tracker.log.model import Codes, Floats, Ints
 from tracker.settings.schema import NonNegative, Positive, about
-from tracker.simulation.settings import Section, Share
+from tracker.simulation.settings import Section, Share, check_rows
 from tracker.simulation.streams import Streams
 
 
@@ -41,7 +41,8 @@ class ClutterSettings(Section, frozen=True):
 
 
 def clutter_frames(mean: float, frames: int, streams: Streams) -> Ints:
-    """(n,) sorted frame indices of clutter, `mean` a frame."""
+    """(n,) sorted frame indices of clutter, `mean` a frame. Raises UsageError if too many."""
+    check_rows(mean * frames, "false detections")
     return np.repeat(np.arange(frames), streams("clutter numbers").poisson(mean, frames))
 
 

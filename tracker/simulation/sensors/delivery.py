@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from tracker.errors import UsageError
 from tracker.log.model import Floats, Ints
-from tracker.simulation.settings import ClockSettings, DeliverySettings
+from tracker.simulation.settings import ClockSettings, DeliverySettings, check_rows
 from tracker.simulation.streams import Streams
 from tracker.simulation.tables import rounded
 
@@ -37,8 +37,9 @@ class Frames:
 def deliver(clock: ClockSettings, delivery: DeliverySettings, streams: Streams) -> Frames:
     """Draw capture times, losses and delays. Frame k is due at (k - 1) / frame rate.
 
-    Raises UsageError if no frame would be left.
+    Raises UsageError if no frame would be left, or there would be far too many.
     """
+    check_rows(clock.seconds * clock.frame_rate_hz, "frames")
     count = round(clock.seconds * clock.frame_rate_hz)
     period = 1.0 / clock.frame_rate_hz
     due: Floats = np.arange(count, dtype=np.float64) * period

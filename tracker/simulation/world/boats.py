@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 
 from tracker.log.model import Codes, Floats, Ints
 from tracker.settings.schema import NonNegative, Positive, about
-from tracker.simulation.settings import Section, Share
+from tracker.simulation.settings import ArrivalRate, Section, Share, WarmUp
 from tracker.simulation.streams import Streams, poisson_times
 from tracker.simulation.world.movement import Movement, Recorder
 
@@ -39,11 +39,9 @@ class ApproachSettings(Section, frozen=True):
     length_m: Annotated[float, Positive, about("Extent in x, away from the quay", "m")] = 4000.0
     width_m: Annotated[float, Positive, about("Extent in y, along the quay", "m")] = 5000.0
     arrivals_per_minute: Annotated[
-        float, Positive, about("Rate at which boats come in at the edges (Poisson)", "1/min")
+        float, ArrivalRate, about("Rate at which boats come in at the edges (Poisson)", "1/min")
     ] = 1.6
-    warm_up_seconds: Annotated[
-        float, NonNegative, about("Simulated before the first scan", "s")
-    ] = 600.0
+    warm_up_seconds: Annotated[float, WarmUp, about("Simulated before the first scan", "s")] = 600.0
     straight_seconds: Annotated[
         float, Positive, about("Mean length of a straight leg (exponential)", "s")
     ] = 50.0

@@ -9,7 +9,7 @@ from msgspec import Meta
 
 from tracker.log.model import Floats, Ints
 from tracker.settings.schema import NonNegative, Positive, about
-from tracker.simulation.settings import Section
+from tracker.simulation.settings import Section, check_rows
 from tracker.simulation.streams import Streams
 from tracker.simulation.world.movement import Movement
 
@@ -64,8 +64,11 @@ def drift(settings: DriftSettings, times: Floats, streams: Streams) -> Movement:
 
     Between frames dt apart, per axis: [x, v] += [v dt, 0] + noise of covariance
     q [dt^3/3, dt^2/2; dt^2/2, dt], q = acceleration_noise^2 (exact, no small steps).
+
+    Raises UsageError for more rows than fit in memory.
     """
     count = settings.objects
+    check_rows(float(count) * len(times), "true objects")
     noise, lives, births = streams("drift"), streams("lives"), streams("births")
     xy, velocity = _born(settings, count, births)
     identity = np.arange(count)

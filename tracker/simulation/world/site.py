@@ -8,7 +8,7 @@ import numpy as np
 from msgspec import Meta
 
 from tracker.settings.schema import NonNegative, Positive, about
-from tracker.simulation.settings import Section, Share
+from tracker.simulation.settings import ArrivalRate, Section, Share, WarmUp
 
 
 class DoorSettings(Section, frozen=True):
@@ -92,11 +92,11 @@ class TrafficSettings(Section, frozen=True):
     """Who comes, how often, and how they move."""
 
     arrivals_per_minute: Annotated[
-        float, Positive, about("Rate at which parties come in (Poisson process)", "1/min")
+        float, ArrivalRate, about("Rate at which parties come in (Poisson process)", "1/min")
     ] = 20.0
     warm_up_seconds: Annotated[
         float,
-        NonNegative,
+        WarmUp,
         about("Simulated before the first frame, so that the place is in use", "s"),
     ] = 60.0
     bicycle_share: Annotated[float, Share, about("Share of parties that are one bicycle")] = 0.10

@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from tracker.log.model import Codes, Floats, Ints
 from tracker.settings.schema import NonNegative, Positive, about
-from tracker.simulation.settings import Section, Share
+from tracker.simulation.settings import ArrivalRate, Section, Share, WarmUp
 from tracker.simulation.streams import Streams, poisson_times
 from tracker.simulation.world.movement import Movement, Recorder
 
@@ -44,11 +44,11 @@ class FleetSettings(Section, frozen=True):
     yard_length_m: Annotated[float, Positive, about("Extent of the yard in x", "m")] = 80.0
     yard_width_m: Annotated[float, Positive, about("Extent of the yard in y", "m")] = 50.0
     arrivals_per_minute: Annotated[
-        float, Positive, about("Rate at which vehicles come in at the gates (Poisson)", "1/min")
+        float, ArrivalRate, about("Rate at which vehicles come in at the gates (Poisson)", "1/min")
     ] = 6.0
-    warm_up_seconds: Annotated[
-        float, NonNegative, about("Simulated before the first frame", "s")
-    ] = 120.0
+    warm_up_seconds: Annotated[float, WarmUp, about("Simulated before the first frame", "s")] = (
+        120.0
+    )
     carrier_share: Annotated[float, Share, about("Share of vehicles that are carriers")] = 0.3
     stops: Annotated[
         int, Meta(ge=1, le=10), about("Stops of each vehicle before it leaves", "stops")
