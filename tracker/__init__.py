@@ -9,6 +9,7 @@ from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from tracker.association import CandidatePairs, register_cost
     from tracker.engine import Engine, FrameResult
     from tracker.errors import MargentError
     from tracker.evaluation import evaluate
@@ -20,6 +21,7 @@ if TYPE_CHECKING:
 # Where each public name lives. They are imported on first use (PEP 562), so that
 # `margent --help` does not wait for numba.
 _HOME = {
+    "CandidatePairs": "tracker.association",
     "DetectionLog": "tracker.log",
     "Engine": "tracker.engine",
     "Frame": "tracker.log",
@@ -36,10 +38,12 @@ _HOME = {
     "read_log": "tracker.log",
     "read_run": "tracker.results",
     "read_truth": "tracker.log",
+    "register_cost": "tracker.association",
     "track_log": "tracker.offline",
 }
 
 __all__ = [
+    "CandidatePairs",
     "DetectionLog",
     "Engine",
     "Frame",
@@ -56,6 +60,7 @@ __all__ = [
     "read_log",
     "read_run",
     "read_truth",
+    "register_cost",
     "track_log",
 ]
 

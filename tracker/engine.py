@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tracker.association import TierDecision, associate
+from tracker.association.marginals import Marginals, mixture, tier_marginals
 from tracker.association.rule import association_rules
 from tracker.errors import InputError, UsageError
 from tracker.kernels.cost import blend_embeddings
@@ -61,6 +62,7 @@ class FrameResult:
     tiers : what each tier decided; its `track` indexes `considered`.
     considered : (k,) ids of the tracks that were live when the frame was associated.
     prediction : None if the engine does not explain.
+    marginals : in joint-probabilistic mode each tier's probabilities, else nothing.
     """
 
     number: int
@@ -78,6 +80,7 @@ class FrameResult:
     tiers: tuple[TierDecision, ...]
     considered: Ints
     prediction: Prediction | None
+    marginals: tuple[Marginals, ...]
 
     def __len__(self) -> int:
         return len(self.track)
@@ -147,7 +150,7 @@ class Engine:
         if self.explain:
             self._weigh(tiers)
 
-        self.motion.update(table.mean, table.covariance, pairing, frame.z, variance)
+        marginals = self._correct(tiers, pairing, frame, variance)
         if self._memory is not None and frame.embedding is not None:
             blend_embeddings(table.embedding, pairing, frame.embedding, self._memory)
         paired = take_over(table.score, table.label, pairing, frame.score, frame.label)
@@ -172,7 +175,7 @@ class Engine:
         if paired < len(frame):
             born, pairing = self._give_birth(frame, variance, pairing)
             transitions += born
-        return self._result(frame, pairing, transitions, tiers, considered, prediction)
+        return self._result(frame, pairing, transitions, tiers, considered, prediction, marginals)
 
     def _elapse(self, frame: Frame) -> float:
         elapsed = frame.time - self.now
@@ -218,6 +221,19 @@ class Engine:
         estimate, _, covariance = measured_part(table.mean, table.covariance, self.kind.dimension)
         unseen = frame.time - table.last_seen
         return Prediction(estimate, covariance, table.state.copy(), unseen, variance)
+
+    def _correct(
+        self, tiers: tuple[TierDecision, ...], pairing: Ints, frame: Frame, variance: Floats
+    ) -> tuple[Marginals, ...]:
+        """Correct each track by its detection, or in joint mode by all that might be its own."""
+        table, how = self.table, self.settings.association
+        if how.mode == "best":
+            self.motion.update(table.mean, table.covariance, pairing, frame.z, variance)
+            return ()
+        shares = tuple(tier_marginals(tier, how.exact_limit, how.ranked) for tier in tiers)
+        alternatives = mixture(tiers, shares, len(table))
+        self.motion.update_jointly(table.mean, table.covariance, alternatives, frame.z, variance)
+        return shares
 
     def _weigh(self, tiers: tuple[TierDecision, ...]) -> None:
         for tier in tiers:
@@ -271,6 +287,7 @@ class Engine:
         tiers: tuple[TierDecision, ...],
         considered: Ints,
         prediction: Prediction | None,
+        marginals: tuple[Marginals, ...],
     ) -> FrameResult:
         table = self.table
         estimate, rate, covariance = measured_part(
@@ -292,6 +309,7 @@ class Engine:
             tiers=tiers,
             considered=considered,
             prediction=prediction,
+            marginals=marginals,
         )
 
 

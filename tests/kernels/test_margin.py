@@ -7,7 +7,7 @@ from tests.kernels.problems import DEGENERATE, full, random_problems, sparse
 from tests.reference import margin as twin
 from tracker.kernels.assignment import assign, problem_frontier
 from tracker.kernels.components import label_components
-from tracker.kernels.margin import force_costs, margins
+from tracker.kernels.margin import force_costs, hub_distances, margins
 
 
 def check(allowed, cost, miss, new):
@@ -81,3 +81,18 @@ def test_force_costs_only_where_wanted():
     )
     assert np.isnan(forced[0])
     assert forced[1] == pytest.approx(1.0)
+
+
+def test_hub_distances_of_misses_and_news():
+    for allowed, cost, miss, new in random_problems(150, seed=13, largest=5):
+        problem = sparse(allowed, cost, miss, new)
+        components = label_components(problem.start, problem.column, len(problem.new))
+        answer = assign(problem, components, problem_frontier(problem))
+        to_hub, from_hub = hub_distances(problem, components, answer)
+        of_row, of_column = twin.hub_distances(
+            allowed, cost, miss, new, answer.row_column, answer.column_row
+        )
+        known = ~np.isnan(of_row)
+        np.testing.assert_allclose(to_hub[known], of_row[known], atol=1e-9)
+        known = ~np.isnan(of_column)
+        np.testing.assert_allclose(from_hub[known], of_column[known], atol=1e-9)

@@ -40,7 +40,7 @@ def test_missing_file(tmp_path, read):
         (b"\xef\xbb\xbf", "there is no header and no row"),
         (b"frame,x,y\n\x00\x01\x02", "this is a binary file"),
         (b"\x89PNG\r\n\x1a\n\0\0\0\rIHDR", "this is a binary file"),
-        (gzip.compress(b"frame,x,y\n1,2,3\n"), "compressed (gzip)"),
+        (gzip.compress(b"frame,x,y\n1,2,3\n", mtime=0), "compressed (gzip)"),
         (b'[{"frame": 1, "x": 1, "y": 2}]', "a JSON document, not one object a line"),
         (b'{\n  "frame": 1\n}\n', "a JSON document, not one object a line"),
         (b"1,2,3\n1,2,4\n", "the first row is not a header"),

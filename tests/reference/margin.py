@@ -23,6 +23,15 @@ def margins(allowed, cost, miss, new, row_column, column_row):
     return of_row, of_column
 
 
+def hub_distances(allowed, cost, miss, new, row_column, column_row):
+    """G of missed rows and H of new columns are their margins; nan where they are not that."""
+    of_row, of_column = margins(allowed, cost, miss, new, row_column, column_row)
+    return (
+        np.where(np.asarray(row_column) < 0, of_row, np.nan),
+        np.where(np.asarray(column_row) < 0, of_column, np.nan),
+    )
+
+
 def force_costs(allowed, cost, miss, new):
     """(n, m) force costs by solving again, nan where there is no candidate."""
     full = square(allowed, cost, miss, new)

@@ -6,9 +6,10 @@ import numpy as np
 import pytest
 from scipy import stats
 
-from tests.simulation.pairs import settings
+from tests.simulation.pairs import check_standard, settings
 from tracker.simulation import SimulatedSequence, simulate
 from tracker.simulation.streams import Streams
+from tracker.simulation.world.drift import DriftSettings, drift
 from tracker.simulation.world.parties import LABELS
 from tracker.simulation.world.walkers import walk
 
@@ -106,6 +107,19 @@ def test_a_filter_with_half_or_double_the_noise_is_not(q):
     """The check above has the power to see a factor of two."""
     low, high = bounds(400, 2)
     assert not low < filtered_drift(q)[0].mean() < high
+
+
+def test_steps_of_the_drift_have_the_textbook_covariance():
+    """Steps whitened by the Cholesky factor of Q are independent standard normal numbers."""
+    times = np.array([0.0, 0.7, 2.0])  # uneven on purpose
+    field = DriftSettings(objects=3000, spacing=1e5, life_seconds=0.0, acceleration_noise=40.0)
+    movement = drift(field, times, Streams(5))
+    xy, velocity = (part.reshape(3, 3000, 2) for part in (movement.xy, movement.velocity))
+    for k, dt in enumerate(np.diff(times)):
+        moved = xy[k + 1] - xy[k] - dt * velocity[k]
+        step = np.stack((moved, velocity[k + 1] - velocity[k]), axis=-1).reshape(-1, 2)
+        factor = np.linalg.cholesky(transition(dt, 40.0)[1])
+        check_standard(np.linalg.solve(factor, step.T).T)
 
 
 def test_drift_stays_in_the_field_and_renews_itself():

@@ -6,23 +6,11 @@ import numpy as np
 import pytest
 from scipy import stats
 
-from tests.simulation.pairs import filter_order, pairs, settings
+from tests.simulation.pairs import check_standard, filter_order, pairs, settings
 from tracker.log.model import box_centre
 from tracker.simulation import simulate
 
 TAIL = 0.001
-
-
-def check_standard(normals: np.ndarray) -> None:
-    """(n, d) should be independent standard normal numbers (seeded, bounds at 0.1%)."""
-    count, dimension = normals.shape
-    # n times the sample mean squared is chi-square with d degrees.
-    assert count * np.sum(normals.mean(axis=0) ** 2) < stats.chi2.ppf(1 - TAIL, dimension)
-    for column in normals.T:
-        low, high = stats.chi2.ppf([TAIL / 2, 1 - TAIL / 2], count)
-        assert low < np.sum(column**2) < high
-    correlation = np.corrcoef(normals.T) - np.eye(dimension)
-    assert np.abs(correlation).max() < 4 / np.sqrt(count)
 
 
 @pytest.mark.parametrize("scene", ["forecourt", "fog", "scale"])

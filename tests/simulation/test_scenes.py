@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+from functools import cache
 
 import numpy as np
 import pytest
@@ -31,6 +32,7 @@ CLUTTER_RATE = {
 scenes = pytest.mark.parametrize("scene", list(SHORT))
 
 
+@cache
 def short(scene: str, *changes: str, seed: int = 11) -> SimulatedSequence:
     return simulate(scene, seed=seed, settings=settings(scene, *SHORT[scene], *changes))
 
@@ -49,7 +51,8 @@ def test_the_scenes_of_tern_quay():
 
 @scenes
 def test_same_seed_same_bytes_other_seed_others(scene):
-    first, again, other = short(scene), short(scene), short(scene, seed=12)
+    first, other = short(scene), short(scene, seed=12)
+    again = simulate(scene, seed=11, settings=settings(scene, *SHORT[scene]))
     assert sequence_files(first) == sequence_files(again)
     for name in ("detections.csv", "truth.csv"):
         assert sequence_files(first)[name] != sequence_files(other)[name]

@@ -117,8 +117,9 @@ def _read_truths(given: list[str], names: list[str]) -> dict[str, Truth]:
     """The truth of each sequence, from files in order, NAME=FILE, or a folder."""
     from tracker.log import read_truth
 
-    named = dict(text.split("=", 1) for text in given if text.split("=", 1)[0] in names)
-    plain = [text for text in given if text.split("=", 1)[0] not in names]
+    parts = {text: text.partition("=") for text in given}
+    named = {name: file for name, equals, file in parts.values() if equals and name in names}
+    plain = [text for text in given if not (parts[text][1] and parts[text][0] in names)]
     if len(plain) == 1 and not named and (len(names) > 1 or Path(plain[0]).is_dir()):
         folder = Path(plain[0])
         if folder.is_dir() and not list(folder.glob("truth.*")):

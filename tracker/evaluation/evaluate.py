@@ -6,11 +6,14 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
+import numpy as np
+
 from tracker.errors import InputError
+from tracker.evaluation.frames import FramePair
 from tracker.evaluation.referee import referee_counts
 from tracker.evaluation.scope import Scope, scored_pairs
 from tracker.evaluation.scores import Counts, Scores
-from tracker.log.model import Truth
+from tracker.log.model import Ints, Truth
 from tracker.results.tracks import Tracks
 
 
@@ -44,12 +47,31 @@ def evaluate(tracks: Tracks, truth: Truth, scope: Scope | None = None) -> Scores
     scope = scope or Scope()
     pairs = scored_pairs(tracks, truth, scope)
     for pair in pairs:
-        if len(set(pair.track.tolist())) < len(pair.track):
-            raise InputError(
-                f"a track is twice in frame {pair.number} of '{tracks.name}'",
-                remedy="Every track may have one row a frame.",
-            )
+        _refuse_twins(pair, tracks, truth)
     return Scores(referee_counts(pairs, tracks.kind, scope))
+
+
+def _refuse_twins(pair: FramePair, tracks: Tracks, truth: Truth) -> None:
+    track = _repeated(pair.track)
+    if track is not None:
+        raise InputError(
+            f"track {track} is twice in frame {pair.number} of '{tracks.name}'",
+            remedy="Every track may have one row a frame.",
+        )
+    thing = _repeated(pair.truth)
+    if thing is not None:
+        raise InputError(
+            f"object '{truth.object_names[thing]}' is twice in frame {pair.number}",
+            path=truth.path,
+            remedy="Every object may have one row a frame.",
+        )
+
+
+def _repeated(identities: Ints) -> int | None:
+    """The first identity that is there more than once."""
+    ordered = np.sort(identities)
+    twin = np.flatnonzero(ordered[1:] == ordered[:-1])
+    return int(ordered[twin[0]]) if len(twin) else None
 
 
 def evaluate_all(

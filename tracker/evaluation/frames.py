@@ -80,8 +80,8 @@ def frame_pairs(tracks: Tracks, truth: Truth, counted: NDArray[np.bool_]) -> lis
 def aligned_frames(tracks: Tracks, truth: Truth) -> Ints:
     """(n,) frame of each truth row in the tracks' numbering.
 
-    The truth's own numbers, unless both have times and equal numbers mean different times: then
-    each truth time goes to the track frame nearest in time, if that is nearer than half the usual
+    The truth's own numbers, unless both have times and those contradict the numbers: then each
+    truth time goes to the track frame nearest in time, if that is nearer than half the usual
     step, and to a number of its own behind all frames otherwise.
     """
     if truth.time is None or not len(tracks) or not len(truth):
@@ -89,9 +89,7 @@ def aligned_frames(tracks: Tracks, truth: Truth) -> Ints:
     frames, first = np.unique(tracks.frame, return_index=True)
     times = tracks.time[first]
     step = float(np.median(np.diff(times))) if len(times) > 1 else np.inf
-    at = np.searchsorted(frames, truth.frame)
-    known = (at < len(frames)) & (frames[np.minimum(at, len(frames) - 1)] == truth.frame)
-    if known.any() and np.all(np.abs(times[at[known]] - truth.time[known]) <= 0.5 * step):
+    if _from_numbers(frames, times) or _agree(frames, times, truth.frame, truth.time, step):
         return truth.frame
     order = np.argsort(times)
     right = np.clip(np.searchsorted(times[order], truth.time), 1, max(1, len(times) - 1))
@@ -102,3 +100,20 @@ def aligned_frames(tracks: Tracks, truth: Truth) -> Ints:
     near = np.abs(times[nearest] - truth.time) <= 0.5 * step
     beyond = frames[-1] + 1 + np.unique(truth.time, return_inverse=True)[1]
     return np.where(near, frames[nearest], beyond)
+
+
+def _from_numbers(frames: Ints, times: Floats) -> bool:
+    """Whether the times are nothing but the frame numbers divided by a rate.
+
+    That is what a file without times gets; a truth whose clock starts elsewhere is no
+    contradiction then.
+    """
+    seconds = times[-1] / frames[-1] if frames[-1] else 0.0
+    return bool(np.allclose(times, frames * seconds, rtol=1e-9, atol=1e-9))
+
+
+def _agree(frames: Ints, times: Floats, number: Ints, time: Floats, step: float) -> bool:
+    """Whether equal numbers mean equal times; a few late timestamps do not unseat them."""
+    at = np.minimum(np.searchsorted(frames, number), len(frames) - 1)
+    known = frames[at] == number
+    return bool(known.any()) and float(np.median(np.abs(times[at] - time)[known])) <= 0.5 * step

@@ -55,7 +55,7 @@ def referee_counts(pairs: Iterable[FramePair], kind: Kind, scope: Scope) -> Coun
                 accumulator.update(
                     pair.truth.tolist(),
                     np.searchsorted(identities, pair.track).tolist(),
-                    distances(pair, kind, scope),
+                    distances(pair, kind, scope.iou_threshold, scope.distance_threshold),
                     frameid=number,
                 )
             found = mm.metrics.create().compute(

@@ -9,8 +9,8 @@ from numpy.typing import NDArray
 from scipy.optimize import linear_sum_assignment
 
 from tracker.errors import UsageError
+from tracker.evaluation.distance import distances
 from tracker.evaluation.frames import FramePair, frame_pairs
-from tracker.kernels.overlap import overlap_matrix
 from tracker.log.model import Kind, Truth
 from tracker.results.tracks import Tracks, TrackState
 
@@ -75,10 +75,10 @@ def scored_pairs(tracks: Tracks, truth: Truth, scope: Scope) -> list[FramePair]:
         words = {Kind.BOX: "boxes", Kind.POINT: "points"}
         raise UsageError(f"the tracks are {words[tracks.kind]}, the truth {words[truth.kind]}")
     scope = scope.for_truth(truth)
-    scored = truth.scored & _labelled(truth, scope.classes_scored)
     ignored = _labelled(truth, scope.classes_ignored)
+    scored = truth.scored & _labelled(truth, scope.classes_scored) & ~ignored
     pairs = frame_pairs(tracks, truth, _reported(tracks, scope.count_coasting))
-    return [_in_scope(pair, scored, ignored, scope.iou_threshold) for pair in pairs]
+    return [_in_scope(pair, scored, ignored, truth.kind, scope) for pair in pairs]
 
 
 def _reported(tracks: Tracks, count_coasting: bool | None) -> NDArray[np.bool_]:
@@ -96,16 +96,21 @@ def _labelled(truth: Truth, wanted: tuple[str, ...] | None) -> NDArray[np.bool_]
 
 
 def _in_scope(
-    pair: FramePair, scored: NDArray[np.bool_], ignored: NDArray[np.bool_], threshold: float
+    pair: FramePair,
+    scored: NDArray[np.bool_],
+    ignored: NDArray[np.bool_],
+    kind: Kind,
+    scope: Scope,
 ) -> FramePair:
-    """Take out what does not count; boxes on ignored truth by one joint matching of all rows."""
+    """Take out what does not count; tracks on ignored truth by one joint matching of all rows."""
     wanted = scored[pair.truth_row]
     on_ignored = ignored[pair.truth_row]
     if on_ignored.any() and len(pair.track):
-        # All annotated rows compete, so a box on a scored object beside an ignored one stays.
-        overlap = overlap_matrix(pair.truth_z, pair.track_z)
-        allowed = overlap >= threshold
-        rows, columns = linear_sum_assignment(np.where(allowed, 1.0 - overlap, 1e3))
+        # All annotated rows compete, so a track on a scored object beside an ignored one stays.
+        apart = distances(pair, kind, scope.iou_threshold, scope.distance_threshold)
+        allowed = np.isfinite(apart)
+        far = 2.0 * min(apart.shape) * (1.0 + np.max(apart, where=allowed, initial=0.0))
+        rows, columns = linear_sum_assignment(np.where(allowed, apart, far))
         taken = allowed[rows, columns] & on_ignored[rows]
         keep = np.ones(len(pair.track), np.bool_)
         keep[columns[taken]] = False

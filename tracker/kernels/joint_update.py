@@ -24,7 +24,7 @@ import numpy as np
 from numba import njit
 from numpy.typing import NDArray
 
-from tracker.kernels.kalman import UPDATE_OK, update_four, update_two
+from tracker.kernels.kalman import UPDATE_OK, update_constant_velocity
 
 
 class Mixture(NamedTuple):
@@ -74,10 +74,7 @@ def joint_update(
         if count == 0:
             continue
         # x_j, P_j: the ordinary correction under each alternative
-        if z.shape[1] == 2:
-            status = update_two(x[:count], p[:count], pairing[:count], z, variance, True)
-        else:
-            status = update_four(x[:count], p[:count], pairing[:count], z, variance, True)
+        status = update_constant_velocity(x[:count], p[:count], pairing[:count], z, variance, True)
         if status != UPDATE_OK:
             return i
         _combine(mean, covariance, i, max(0.0, none), beta[:count], x, p)

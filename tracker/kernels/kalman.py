@@ -130,8 +130,7 @@ def update_constant_velocity(
     return UPDATE_OK
 
 
-# Inlined where it is called: the call would cost more than the work.
-@njit(cache=True, inline="always")
+@njit(cache=True)
 def squared_mahalanobis(
     mean: NDArray[np.float64],
     covariance: NDArray[np.float64],
@@ -145,7 +144,7 @@ def squared_mahalanobis(
     """d² and ln det S of state i and measurement j; (inf, inf) if S is not positive definite.
 
     mean, covariance : (n, s), (n, s, s).   z, variance : (m, d), (m, d) diagonals of R.
-    scratch : (d + 2, d).
+    scratch : (d + 2, d).   Rows are given by number: a slice costs more than the arithmetic.
     """
     d = z.shape[1]
     d2 = 0.0

@@ -39,7 +39,7 @@ class _Parts(NamedTuple):
     """Unopened parts: `order` sorts the slots by cost, the first found first."""
 
     order: NDArray[np.int64]  # (k + 1,) slots in use, then free ones
-    count: NDArray[np.int64]  # (1,) how many are in use
+    used: NDArray[np.int64]  # (1,) how many are in use
     cost: NDArray[np.float64]  # (k + 1,) of the cheapest event
     first: NDArray[np.int64]  # (k + 1,) rows before it are settled
     barred: NDArray[np.bool_]  # (k + 1, most candidates of a row) of row `first`
@@ -174,14 +174,14 @@ def _insert(parts: _Parts, room: int) -> float:
 
     room : most parts that are still of use.
     """
-    count = parts.count[0]
+    count = parts.used[0]
     slot = parts.order[count]
     at = count
     while at > 0 and parts.cost[slot] < parts.cost[parts.order[at - 1]]:
         parts.order[at] = parts.order[at - 1]
         at -= 1
     parts.order[at] = slot
-    parts.count[0] = count + 1
+    parts.used[0] = count + 1
     return _trim(parts, room)
 
 
@@ -189,18 +189,18 @@ def _insert(parts: _Parts, room: int) -> float:
 def _trim(parts: _Parts, room: int) -> float:
     """Let go of the dearest parts beyond `room`; returns their mass."""
     lost = 0.0
-    while parts.count[0] > room:
-        parts.count[0] -= 1
-        lost += parts.mass[parts.order[parts.count[0]]]
+    while parts.used[0] > room:
+        parts.used[0] -= 1
+        lost += parts.mass[parts.order[parts.used[0]]]
     return lost
 
 
 @njit(cache=True)
 def _dearest(parts: _Parts, room: int) -> float:
     """Cost that a new part must stay below to be of use."""
-    if parts.count[0] < room:
+    if parts.used[0] < room:
         return np.inf
-    return parts.cost[parts.order[parts.count[0] - 1]] if room > 0 else -np.inf
+    return parts.cost[parts.order[parts.used[0] - 1]] if room > 0 else -np.inf
 
 
 @njit(cache=True)
@@ -262,7 +262,7 @@ def _consider(
 
     at_least : what its events cost at least.   best : cost of the best event of all.
     """
-    slot = parts.order[parts.count[0]]
+    slot = parts.order[parts.used[0]]
     if at_least >= _dearest(parts, room):
         return _mass(problem, weights, parts, slot, free, at_least - best)
     _solve_part(problem, parts, slot, free, frontier)
@@ -292,7 +292,7 @@ def _split(
                 # Either bar the candidate that was taken, or take one instead of the miss.
                 if barred or not free[problem.column[e]] or (taken >= 0 and e != taken):
                     continue
-                slot = parts.order[parts.count[0]]
+                slot = parts.order[parts.used[0]]
                 if taken >= 0:
                     more = _without(problem, parts, opened, t, e, slot, free)
                 else:
@@ -333,7 +333,7 @@ def _take_first(parts: _Parts) -> int:
     for at in range(len(parts.order) - 1):
         parts.order[at] = parts.order[at + 1]
     parts.order[-1] = opened
-    parts.count[0] -= 1
+    parts.used[0] -= 1
     return opened
 
 
@@ -351,7 +351,7 @@ def rank_component(problem: Problem, k: int) -> Ranking:
     row_candidate = np.empty((k, len(problem.miss)), np.int64)
     found = 0
     rest = 0.0
-    while parts.count[0] > 0:
+    while parts.used[0] > 0:
         opened = _take_first(parts)
         cost[found] = parts.cost[opened]
         row_candidate[found] = parts.row_candidate[opened]

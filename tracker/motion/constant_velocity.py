@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from tracker.errors import KernelError, SettingsError, UsageError
+from tracker.kernels.joint_update import Mixture, joint_update
 from tracker.kernels.kalman import (
     UPDATE_OK,
     initiate_constant_velocity,
@@ -23,12 +24,11 @@ class ConstantVelocity:
     log's own length unit and seconds. The settings' noise levels are in box scales for boxes, so
     that near and far objects are treated alike, and in the length unit for points.
 
-    coupled : whether the axes of the covariances may be correlated. Nothing here correlates them.
+    coupled : whether the axes of the covariances may be correlated; only `update_jointly`
+    correlates them.
 
     Raises SettingsError for measurement noise in box scales where nothing is a box.
     """
-
-    coupled = False
 
     def __init__(self, settings: Settings, kind: Kind) -> None:
         motion, measurement = settings.motion, settings.measurement
@@ -38,6 +38,7 @@ class ConstantVelocity:
                 "box scales need boxes, these are points; set it to 'absolute' or 'auto'",
                 setting="measurement.unit",
             )
+        self.coupled = settings.association.mode == "joint-probabilistic"
         self.dimension = kind.dimension
         self.states = 2 * kind.dimension
         # (noise on position axes, on size axes, whether in box scales)
@@ -80,6 +81,19 @@ class ConstantVelocity:
         Raises KernelError if an innovation covariance is not positive definite.
         """
         status = update_constant_velocity(mean, covariance, pairing, z, variance, self.coupled)
+        if status != UPDATE_OK:
+            raise KernelError(
+                f"the innovation covariance of table row {status} is not positive definite"
+            )
+
+    def update_jointly(
+        self, mean: Floats, covariance: Floats, mixture: Mixture, z: Floats, variance: Floats
+    ) -> None:
+        """Correct (n, s) states in place, each by the weighted combination of its alternatives.
+
+        Raises KernelError if an innovation covariance is not positive definite.
+        """
+        status = joint_update(mean, covariance, mixture, z, variance)
         if status != UPDATE_OK:
             raise KernelError(
                 f"the innovation covariance of table row {status} is not positive definite"

@@ -201,6 +201,50 @@ class CostSettings(_Section):
     ] = None
 
 
+EXACT_LIMIT_MOST = 18  # time and memory double with each: some tenths of a second there
+
+
+class AssociationSettings(_Section):
+    """What corrects a track: its own detection, or all that might be its own.
+
+    Joint-probabilistic mode weighs all joint events of a frame (Fortmann, Bar-Shalom and Scheffe
+    1983) and corrects each track by the weighted combination of its candidates. The weights are
+    probabilities if costs are log-likelihood ratios, that is with the 'likelihood' cost; overlap
+    and mahalanobis costs make pseudo-probabilities of them. Which detection a track is paired
+    with, births and lifecycle follow the best assignment in both modes. Known limit: tracks that
+    stay close together are drawn into one another (coalescence).
+    """
+
+    mode: Annotated[
+        Literal["best", "joint-probabilistic"],
+        about(
+            "'best' corrects a track by the detection of the best assignment; "
+            "'joint-probabilistic' by all its candidates, each weighted by its probability over "
+            "all joint assignments, which needs the 'likelihood' cost to be one",
+            "",
+            "Fortmann, Bar-Shalom and Scheffe 1983",
+        ),
+    ] = "best"
+    exact_limit: Annotated[
+        int,
+        Meta(ge=1, le=EXACT_LIMIT_MOST),
+        about(
+            "Joint mode: components in which more detections (or tracks) than this are open at "
+            "once are not summed exactly; time and memory double with each",
+            "detections (or tracks)",
+        ),
+    ] = 14
+    ranked: Annotated[
+        int,
+        Meta(ge=1, le=100_000),
+        about(
+            "Joint mode: beyond exact_limit this many best assignments stand for all",
+            "assignments",
+            "Murty 1968",
+        ),
+    ] = 100
+
+
 StateName = Literal["tentative", "confirmed", "coasting"]
 
 
@@ -295,6 +339,7 @@ class Settings(_Section):
     measurement: MeasurementSettings = MeasurementSettings()
     gate: GateSettings = GateSettings()
     cost: CostSettings = CostSettings()
+    association: AssociationSettings = AssociationSettings()
     tiers: Annotated[tuple[TierSettings, ...], Meta(min_length=1)] = (TierSettings(),)
     lifecycle: LifecycleSettings = LifecycleSettings()
     output: OutputSettings = OutputSettings()
