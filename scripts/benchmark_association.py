@@ -13,16 +13,18 @@ import argparse
 import platform
 import time
 from collections.abc import Callable
+from functools import partial
 from importlib.metadata import version
 
 import numpy as np
+from numba import njit
 from scipy.optimize import linear_sum_assignment
 
-from tracker.kernels.assignment import Problem, assign, certify, problem_frontier
+from tracker.kernels.assignment import Assignment, Problem, assign, problem_frontier
 from tracker.kernels.components import label_components
 from tracker.kernels.cost import mahalanobis_term
 from tracker.kernels.gate import gate_candidates
-from tracker.kernels.margin import margins
+from tracker.kernels.solve import solve
 
 GATE = 13.8  # d² at 0.999, two components
 MISS = 2.3
@@ -52,16 +54,26 @@ def gated(arrays: tuple[np.ndarray, ...]) -> Problem:
     return Problem(candidates.start, candidates.column, cost, miss, new)
 
 
-def decide(arrays: tuple[np.ndarray, ...], proof: bool, margin: bool) -> None:
-    """Gate, cost and assignment, with or without the proof and the margins."""
-    problem = gated(arrays)
+@njit
+def assign_only(problem: Problem) -> Assignment:
+    """Components and assignment, compiled into one call as `solve` is."""
     components = label_components(problem.start, problem.column, len(problem.new))
-    frontier = problem_frontier(problem)
-    answer = assign(problem, components, frontier)
-    if proof:
-        certify(problem, components, answer)
-    if margin:
-        margins(problem, components, answer, frontier)
+    return assign(problem, components, problem_frontier(problem))
+
+
+def plain(arrays: tuple[np.ndarray, ...]) -> None:
+    """Gate, cost and assignment."""
+    assign_only(gated(arrays))
+
+
+def proved(arrays: tuple[np.ndarray, ...]) -> None:
+    """The same with the proof."""
+    solve(gated(arrays), False)
+
+
+def explained(arrays: tuple[np.ndarray, ...]) -> None:
+    """The same with the proof and all margins: what the engine does."""
+    solve(gated(arrays), True)
 
 
 def dense(arrays: tuple[np.ndarray, ...]) -> None:
@@ -90,17 +102,12 @@ def show_cost_of_proof(sizes: list[int]) -> None:
     print(f"{'objects':>8} {'without':>10} {'proof':>8} {'both':>8}")
     for objects in sizes:
         arrays = scene(objects)
-        plain, proof, both = in_turn(
-            [
-                lambda a=arrays: decide(a, False, False),
-                lambda a=arrays: decide(a, True, False),
-                lambda a=arrays: decide(a, True, True),
-            ],
+        without, proof, both = in_turn(
+            [partial(call, arrays) for call in (plain, proved, explained)],
             400 if objects < 500 else 60,
         )
-        print(
-            f"{objects:8d} {1e6 * plain:8.0f}us {proof / plain - 1:+8.0%} {both / plain - 1:+8.0%}"
-        )
+        proof, both = proof / without - 1, both / without - 1
+        print(f"{objects:8d} {1e6 * without:8.0f}us {proof:+8.0%} {both:+8.0%}")
 
 
 def show_growth(sizes: list[int]) -> None:
@@ -110,9 +117,7 @@ def show_growth(sizes: list[int]) -> None:
     first = 0.0
     for objects in sizes:
         arrays = scene(objects)
-        (seconds,) = in_turn(
-            [lambda a=arrays: decide(a, True, False)], 200 if objects < 500 else 15
-        )
+        (seconds,) = in_turn([partial(proved, arrays)], 200 if objects < 500 else 15)
         each = 1e6 * seconds / objects
         first = first or each
         print(f"{objects:8d} {each:10.3f} {each / first:17.2f}")
@@ -121,10 +126,10 @@ def show_growth(sizes: list[int]) -> None:
 def show_dense(objects: int) -> None:
     """Against a dense matrix solved by scipy."""
     arrays = scene(objects)
-    ours, theirs = in_turn([lambda: decide(arrays, True, False), lambda: dense(arrays)], 5)
+    ours, theirs = in_turn([partial(proved, arrays), partial(dense, arrays)], 5)
     print(f"against scipy's dense solver at {objects} objects: {theirs / ours:.0f} times faster")
     small = scene(3)
-    ours, theirs = in_turn([lambda: decide(small, True, False), lambda: dense(small)], 500)
+    ours, theirs = in_turn([partial(proved, small), partial(dense, small)], 500)
     print(f"                           at 3 objects: {theirs / ours:.1f} times")
 
 
@@ -134,7 +139,8 @@ def main() -> None:
     options = parser.parse_args()
     packages = ", ".join(f"{name} {version(name)}" for name in ("numpy", "numba", "scipy"))
     print(f"{platform.machine()}, Python {platform.python_version()}, {packages}")
-    decide(scene(300), True, True)  # compile
+    for call in (plain, proved, explained):
+        call(scene(300))  # compile
     show_cost_of_proof([20, 100, 2000])
     show_growth([50, 500, 5000, 50_000])
     show_dense(options.dense)

@@ -48,8 +48,8 @@ def test_table_and_caution(capsys):
 def test_json_has_exactly_overall_and_sequences(capsys):
     found = scores(capsys, CAMPUS / "test.txt", "--truth", CAMPUS / "gt.txt")
     assert set(found) == {"overall", "sequences"}
-    assert list(found["sequences"]) == ["TUD-Campus"]
-    assert found["overall"] == found["sequences"]["TUD-Campus"]
+    assert list(found["sequences"]) == ["test"]
+    assert found["overall"] == found["sequences"]["test"]
     assert found["overall"]["switches"] == 7
     assert found["overall"]["mota"] == pytest.approx(0.526, abs=5e-4)
 
@@ -89,8 +89,8 @@ def test_table_of_several_has_an_overall_line(capsys):
 
 def test_a_truth_named_as_its_sequence(capsys, tmp_path, monkeypatch):
     monkeypatch.chdir(tmp_path)
-    copy(tmp_path, "TUD-Campus", CAMPUS / "gt.txt", "truth.txt")
-    found = scores(capsys, CAMPUS / "test.txt", "--truth", "TUD-Campus")
+    copy(tmp_path, "test", CAMPUS / "gt.txt", "truth.txt")
+    found = scores(capsys, CAMPUS / "test.txt", "--truth", "test")
     assert found["overall"]["switches"] == 7
 
 
@@ -145,13 +145,13 @@ def test_coasting(capsys, tmp_path):
         (["none.txt", "--truth", "{gt}"], "none.txt: there is no such file"),
         (["{test}", "--truth", "none.txt"], "none.txt: there is no such file"),
         (["{test}"], "--truth"),
-        (["{test}", "--truth", "{gt}", "--truth", "{gt}"], "1 sequences (TUD-Campus) but 2"),
+        (["{test}", "--truth", "{gt}", "--truth", "{gt}"], "1 sequence (test) but 2"),
         (["{test}", "{test}", "--truth", "{gt}"], "two sets of tracks"),
         (["{test}", "--truth", "{gt}", "--iou-threshold", "0"], "IoU threshold"),
         (["{test}", "--truth", "{gt}", "--iou-threshold", "much"], "--iou-threshold"),
         (["{test}", "--truth", "{gt}", "--coasting", "maybe"], "found 'maybe'"),
         (["{here}", "--truth", "{gt}"], "neither a run folder nor a folder of them"),
-        (["{test}", "--truth", "{here}"], "no truth for the sequence 'TUD-Campus'"),
+        (["{test}", "--truth", "{here}"], "no truth for the sequence 'test'"),
         (["{test}", "--truth", "{points}"], "the tracks are boxes, the truth points"),
     ],
 )

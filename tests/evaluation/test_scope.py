@@ -127,5 +127,5 @@ class TestBenchmarkDefaults:
         assert totals(evaluate(make_tracks(self.TRACKS), self.truth(tmp_path), scope)) == (1, 3, 0)
 
     def test_other_formats_have_no_such_defaults(self):
-        truth = make_truth([row for row in self.TRACKS], words=["1", "1", "7", "3"])
+        truth = make_truth(list(self.TRACKS), words=["1", "1", "7", "3"])
         assert totals(evaluate(make_tracks(self.TRACKS), truth)) == (4, 0, 0)

@@ -89,11 +89,11 @@ def evaluate(
 
 
 def _read_tracks(paths: list[Path]) -> dict[str, Tracks]:
-    """Tracks by sequence name; equal names get the path that tells them apart."""
+    """Tracks by sequence name, in the order given."""
     from tracker.log import read_track_file
     from tracker.results import is_run, read_run
 
-    found: dict[str, Tracks] = {}
+    read: list[tuple[Path, Tracks]] = []
     for path in paths:
         runs = [path]
         if path.is_dir() and not is_run(path):
@@ -104,13 +104,23 @@ def _read_tracks(paths: list[Path]) -> dict[str, Tracks]:
                     path=path,
                     remedy="Make one with 'margent associate LOG --out DIR'.",
                 )
-        for run in runs:
-            tracks = read_run(run) if is_run(run) else read_track_file(run)
-            name = tracks.name if tracks.name not in found else (run.name or str(run))
-            if name in found:
-                raise UsageError(f"two sets of tracks are called '{name}'; rename one")
-            found[name] = tracks
-    return found
+        read += [(run, read_run(run) if is_run(run) else read_track_file(run)) for run in runs]
+    names = _names([(path, tracks.name) for path, tracks in read])
+    return dict(zip(names, (tracks for _, tracks in read), strict=True))
+
+
+def _names(named: list[tuple[Path, str]]) -> list[str]:
+    """A name for each: its own, the folder it is in where names are equal, else its path."""
+    own = [name for _, name in named]
+    folder = [(path if path.is_dir() else path.absolute().parent).name for path, _ in named]
+    names = [
+        name if own.count(name) == 1 else at if folder.count(at) == 1 else str(path)
+        for name, at, (path, _) in zip(own, folder, named, strict=True)
+    ]
+    twice = next((name for name in names if names.count(name) > 1), None)
+    if twice is not None:
+        raise UsageError(f"two sets of tracks are called '{twice}'; give each once")
+    return names
 
 
 def _read_truths(given: list[str], names: list[str]) -> dict[str, Truth]:
@@ -129,8 +139,8 @@ def _read_truths(given: list[str], names: list[str]) -> dict[str, Truth]:
         plain *= len(left)  # several runs over one sequence share its truth
     if len(plain) != len(left):
         raise UsageError(
-            f"{len(names)} sequences ({', '.join(names)}) but {len(given)} truth files; give one "
-            "each in order, NAME=FILE, or a folder"
+            f"{len(names)} {'sequence' if len(names) == 1 else 'sequences'} ({', '.join(names)}) "
+            f"but {len(given)} truth files; give one each in order, NAME=FILE, or a folder"
         )
     paths = named | dict(zip(left, plain, strict=True))
     return {name: read_truth(Path(paths[name])) for name in names}

@@ -111,7 +111,7 @@ def _by_grid(
     of the intersection (Dittrich and Seeger 2000).
     """
     per_x, per_y = inverse
-    bucket_start, member, cell, oversized = _fill_grid(other_low, other_high, per_x, per_y)
+    bucket_start, member, cell, corner, oversized = _fill_grid(other_low, other_high, per_x, per_y)
     mask = len(bucket_start) - 2
     start = np.zeros(len(low) + 1, np.int64)
     found = np.empty(max(16, 4 * len(low)), np.int64)
@@ -150,22 +150,21 @@ def _by_grid(
                 for y in range(y0, y1 + 1):
                     bucket = _bucket_of(x, y, mask)
                     for k in range(bucket_start[bucket], bucket_start[bucket + 1]):
-                        if cell[k, 0] != x or cell[k, 1] != y:
-                            continue
-                        j = member[k]
                         if (
-                            other_low[j, 0] > right
-                            or other_high[j, 0] < left
-                            or other_low[j, 1] > bottom
-                            or other_high[j, 1] < top
+                            corner[k, 0] > right
+                            or corner[k, 2] < left
+                            or corner[k, 1] > bottom
+                            or corner[k, 3] < top
+                            or cell[k, 0] != x  # another cell that shares the bucket
+                            or cell[k, 1] != y
                         ):
                             continue
-                        corner_x = max(x0, _cell_of(other_low[j, 0], per_x))
-                        corner_y = max(y0, _cell_of(other_low[j, 1], per_y))
+                        corner_x = max(x0, _cell_of(corner[k, 0], per_x))
+                        corner_y = max(y0, _cell_of(corner[k, 1], per_y))
                         if corner_x == x and corner_y == y:
                             if count == len(found):
                                 found = _grown(found, count + 1)
-                            found[count] = j
+                            found[count] = member[k]
                             count += 1
             _sort_between(found, first, count)
         start[i + 1] = count
@@ -178,11 +177,12 @@ def _by_grid(
 @njit(cache=True)
 def _fill_grid(
     low: NDArray, high: NDArray, per_x: float, per_y: float
-) -> tuple[NDArray[np.int64], NDArray[np.int64], NDArray[np.int64], NDArray[np.int64]]:
+) -> tuple[NDArray, NDArray, NDArray, NDArray, NDArray]:
     """Sort rectangles into hashed cells.
 
-    Returns (buckets + 1,) starts; rectangle and (x, y) cell of each entry; and the rectangles
-    that would fill too many cells and are in none.
+    Returns (buckets + 1,) starts; of each entry the rectangle's number, its (x, y) cell and its
+    (left, top, right, bottom), side by side so that a bucket is read in one go; and the
+    rectangles that would fill too many cells and are in none.
     """
     count = len(low)
     buckets = 1
@@ -208,6 +208,7 @@ def _fill_grid(
         start[b] += start[b - 1]
     member = np.empty(start[buckets], np.int64)
     cell = np.empty((start[buckets], 2), np.int64)
+    corner = np.empty((start[buckets], 4))
     fill = start[:buckets].copy()
     for j in range(count):
         for x in range(span[j, 0], span[j, 1] + 1):
@@ -218,7 +219,9 @@ def _fill_grid(
                 member[k] = j
                 cell[k, 0] = x
                 cell[k, 1] = y
-    return start, member, cell, oversized[:too_large].copy()
+                corner[k, 0], corner[k, 1] = low[j, 0], low[j, 1]
+                corner[k, 2], corner[k, 3] = high[j, 0], high[j, 1]
+    return start, member, cell, corner, oversized[:too_large].copy()
 
 
 @njit(cache=True)
