@@ -118,6 +118,7 @@ class Engine:
         self.explain = explain
         self.now = -np.inf
         self._birth_score = self.settings.lifecycle.birth_score
+        self._joint = self.settings.association.mode == "joint-probabilistic"
         # Weight of the past in the tracks' embeddings; None if no tier looks at appearance.
         self._memory = next(
             (rule.cost.appearance.memory for rule in self.rules if "appearance" in rule.terms),
@@ -150,7 +151,11 @@ class Engine:
         if self.explain:
             self._weigh(tiers)
 
-        marginals = self._correct(tiers, pairing, frame, variance)
+        marginals: tuple[Marginals, ...] = ()
+        if self._joint:
+            marginals = self._correct_jointly(tiers, frame, variance)
+        else:
+            self.motion.update(table.mean, table.covariance, pairing, frame.z, variance)
         if self._memory is not None and frame.embedding is not None:
             blend_embeddings(table.embedding, pairing, frame.embedding, self._memory)
         paired = take_over(table.score, table.label, pairing, frame.score, frame.label)
@@ -222,14 +227,11 @@ class Engine:
         unseen = frame.time - table.last_seen
         return Prediction(estimate, covariance, table.state.copy(), unseen, variance)
 
-    def _correct(
-        self, tiers: tuple[TierDecision, ...], pairing: Ints, frame: Frame, variance: Floats
+    def _correct_jointly(
+        self, tiers: tuple[TierDecision, ...], frame: Frame, variance: Floats
     ) -> tuple[Marginals, ...]:
-        """Correct each track by its detection, or in joint mode by all that might be its own."""
+        """Correct each track by all detections that might be its own, as probable as they are."""
         table, how = self.table, self.settings.association
-        if how.mode == "best":
-            self.motion.update(table.mean, table.covariance, pairing, frame.z, variance)
-            return ()
         shares = tuple(tier_marginals(tier, how.exact_limit, how.ranked) for tier in tiers)
         alternatives = mixture(tiers, shares, len(table))
         self.motion.update_jointly(table.mean, table.covariance, alternatives, frame.z, variance)

@@ -66,7 +66,7 @@ class Ledger:
 
     def _decisions(self, frame: Frame, result: FrameResult, tier: TierDecision) -> None:
         problem, solution = tier.problem, tier.solution
-        answer, components = solution.answer, solution.components
+        answer, components = solution.answer, tier.components
         row_contested = solution.row_margin < self._limit
         column_contested = solution.column_margin < self._limit
         contested = np.zeros(len(components.candidates), np.bool_)

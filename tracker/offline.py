@@ -36,7 +36,7 @@ class ProofSummary:
     def add(self, result: FrameResult) -> None:
         self.frames += 1
         for tier in result.tiers:
-            self.components += len(tier.solution.components.candidates)
+            self.components += tier.solution.components
             self.candidates += len(tier.problem.column)
             self.largest_gap = max(self.largest_gap, abs(tier.solution.gap))
             self.largest_violation = max(self.largest_violation, tier.solution.violation)

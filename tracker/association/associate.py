@@ -12,6 +12,7 @@ from tracker.association.pairs import CandidatePairs
 from tracker.association.rule import AssociationRule
 from tracker.errors import CertificateError, InputError, KernelError
 from tracker.kernels.assignment import Problem
+from tracker.kernels.components import Components, label_components
 from tracker.kernels.gate import GATE_NOT_POSITIVE, GATE_TOO_MANY, Candidates, gate_candidates
 from tracker.kernels.solve import Solution, solve
 from tracker.lifecycle.table import TrackTable
@@ -45,6 +46,11 @@ class TierDecision:
         if self.selected_tracks is not None:
             return self.selected_tracks
         return _numbers(len(self.problem.miss))
+
+    @property
+    def components(self) -> Components:
+        """Components of the candidate graph, found anew at each call."""
+        return label_components(self.problem.start, self.problem.column, len(self.problem.new))
 
     @property
     def detection(self) -> Ints:

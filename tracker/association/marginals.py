@@ -16,6 +16,7 @@ from tracker.association.associate import TierDecision
 from tracker.association.problem import checked_count, checked_problem
 from tracker.kernels import marginals as kernel
 from tracker.kernels.assignment import Problem
+from tracker.kernels.components import label_components
 from tracker.kernels.joint_update import Mixture
 from tracker.kernels.marginals import Marginals
 from tracker.kernels.solve import Solution, solve
@@ -56,8 +57,9 @@ def tier_marginals(tier: TierDecision, exact_limit: int, ranked: int) -> Margina
 
 def _solved(problem: Problem, solution: Solution, exact_limit: int, ranked: int) -> Marginals:
     answer = solution.answer
+    components = label_components(problem.start, problem.column, len(problem.new))
     return kernel.marginals(
-        problem, solution.components, answer.row_price, answer.column_price, exact_limit, ranked
+        problem, components, answer.row_price, answer.column_price, exact_limit, ranked
     )
 
 

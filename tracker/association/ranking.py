@@ -45,7 +45,7 @@ def k_best(problem: Problem, k: int, *, component: int | None = None) -> RankedA
     ----------
     problem : an optional assignment problem, such as `TierDecision.problem`.
     k : how many at most; there may be fewer assignments than that. Memory is of order k (n + m).
-    component : number of the component, as in `TierDecision.solution.components`; all if None.
+    component : number of the component, as in `TierDecision.components`; all if None.
 
     The first is the optimum. Equal costs come in an order that depends on nothing but the
     problem. With costs in nats, exp(cost[0] - cost[r]) are the odds of assignment r against the

@@ -2,15 +2,16 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.optimize import linear_sum_assignment
 
 from tracker.errors import UsageError
-from tracker.evaluation.distance import distances
-from tracker.evaluation.frames import FramePair, frame_pairs
+from tracker.evaluation.clearmot import pair_frames
+from tracker.evaluation.frames import SideBySide, side_by_side
+from tracker.evaluation.scores import THRESHOLDS
 from tracker.log.model import Kind, Truth
 from tracker.results.tracks import Tracks, TrackState
 
@@ -65,11 +66,11 @@ class Scope:
         )
 
 
-def scored_pairs(tracks: Tracks, truth: Truth, scope: Scope) -> list[FramePair]:
-    """The frames to compare, with only the rows that count.
+def scored_rows(tracks: Tracks, truth: Truth, scope: Scope) -> SideBySide:
+    """Truth and tracks side by side, with only the rows that count.
 
     Raises UsageError if tracks and truth do not measure the same kind of thing, or as
-    `Scope.for_truth`.
+    `Scope.for_truth`; InputError where an identity is twice in a frame.
     """
     if tracks.kind is not truth.kind:
         words = {Kind.BOX: "boxes", Kind.POINT: "points"}
@@ -77,8 +78,40 @@ def scored_pairs(tracks: Tracks, truth: Truth, scope: Scope) -> list[FramePair]:
     scope = scope.for_truth(truth)
     ignored = _labelled(truth, scope.classes_ignored)
     scored = truth.scored & _labelled(truth, scope.classes_scored) & ~ignored
-    pairs = frame_pairs(tracks, truth, _reported(tracks, scope.count_coasting))
-    return [_in_scope(pair, scored, ignored, truth.kind, scope) for pair in pairs]
+    both = side_by_side(
+        tracks,
+        truth,
+        _reported(tracks, scope.count_coasting),
+        least_iou=min(scope.iou_threshold, THRESHOLDS[0]),
+        reach=scope.distance_threshold or math.inf,
+    )
+    keep_truth = scored[both.truth_row]
+    keep_track = np.ones(len(both.track_row), np.bool_)
+    if ignored.any():
+        keep_track = ~_on(both, ignored[both.truth_row], scope)
+    if keep_truth.all() and keep_track.all():
+        return both
+    return both.only_rows(keep_truth, keep_track)
+
+
+def close_pairs(both: SideBySide, scope: Scope) -> NDArray[np.bool_]:
+    """(E,) which pairs CLEAR MOT and the identity metrics may use (HOTA has its own thresholds)."""
+    if scope.distance_threshold is not None and both.scene.distance.size:
+        return both.scene.distance <= scope.distance_threshold
+    return both.scene.similarity >= scope.iou_threshold
+
+
+def _on(both: SideBySide, ignored: NDArray[np.bool_], scope: Scope) -> NDArray[np.bool_]:
+    """(M,) tracks that lie on ignored truth, by one joint matching of all rows of a frame.
+
+    All annotated rows compete, so a track on a scored object beside an ignored one stays.
+    """
+    scene = both.only_pairs(close_pairs(both, scope))
+    match = pair_frames(scene, both.objects, keep=False)
+    hit = ignored & (match >= 0)
+    out = np.zeros(len(both.track_row), np.bool_)
+    out[scene.pair_row[match[hit]]] = True
+    return out
 
 
 def _reported(tracks: Tracks, count_coasting: bool | None) -> NDArray[np.bool_]:
@@ -93,26 +126,3 @@ def _labelled(truth: Truth, wanted: tuple[str, ...] | None) -> NDArray[np.bool_]
         return np.ones(len(truth), np.bool_)
     codes = [code for code, name in enumerate(truth.labels) if name in wanted]
     return np.isin(truth.label, codes)
-
-
-def _in_scope(
-    pair: FramePair,
-    scored: NDArray[np.bool_],
-    ignored: NDArray[np.bool_],
-    kind: Kind,
-    scope: Scope,
-) -> FramePair:
-    """Take out what does not count; tracks on ignored truth by one joint matching of all rows."""
-    wanted = scored[pair.truth_row]
-    on_ignored = ignored[pair.truth_row]
-    if on_ignored.any() and len(pair.track):
-        # All annotated rows compete, so a track on a scored object beside an ignored one stays.
-        apart = distances(pair, kind, scope.iou_threshold, scope.distance_threshold)
-        allowed = np.isfinite(apart)
-        far = 2.0 * min(apart.shape) * (1.0 + np.max(apart, where=allowed, initial=0.0))
-        rows, columns = linear_sum_assignment(np.where(allowed, apart, far))
-        taken = allowed[rows, columns] & on_ignored[rows]
-        keep = np.ones(len(pair.track), np.bool_)
-        keep[columns[taken]] = False
-        pair = pair.only_tracks(keep)
-    return pair if wanted.all() else pair.only_truth(wanted)

@@ -96,20 +96,40 @@ def margins(
     (m,) margin of what was decided for each column: its pair, or being new.
     """
     row_margin, column_margin = hub_distances(problem, components, answer)
-    leave, enter = _cheapest_steps(problem, answer)
     for i in range(len(problem.miss)):
-        j = answer.row_column[i]
-        if j < 0:
-            continue
-        margin = row_margin[i] + column_margin[j]
-        # A way around the hub leaves row i by one candidate and enters column j by another.
-        if leave[i] + enter[j] < margin and _has_cycle(components, components.of_row[i]):
-            margin = _around(i, j, margin, enter[j], problem, components, answer, frontier)
-        row_margin[i] = margin
+        if answer.row_column[i] >= 0:
+            row_margin[i] += column_margin[answer.row_column[i]]
+    for c in range(len(components.candidates)):
+        if _has_cycle(components, c):
+            _go_around(problem, components, answer, frontier, row_margin)
+            break
     for j in range(len(problem.new)):
         if answer.column_row[j] >= 0:
             column_margin[j] = row_margin[answer.column_row[j]]
     return row_margin, column_margin
+
+
+@njit(cache=True)
+def _go_around(
+    problem: Problem,
+    components: Components,
+    answer: Assignment,
+    frontier: Frontier,
+    row_margin: NDArray[np.float64],
+) -> None:
+    """Lower the margins of pairs in components with cycles, where a way around the hub is less."""
+    leave, enter = _cheapest_steps(problem, answer)
+    for i in range(len(problem.miss)):
+        j = answer.row_column[i]
+        # A way around the hub leaves row i by one candidate and enters column j by another.
+        if (
+            j >= 0
+            and leave[i] + enter[j] < row_margin[i]
+            and _has_cycle(components, components.of_row[i])
+        ):
+            row_margin[i] = _around(
+                i, j, row_margin[i], enter[j], problem, components, answer, frontier
+            )
 
 
 @njit(cache=True)

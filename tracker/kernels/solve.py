@@ -16,20 +16,20 @@ from tracker.kernels.assignment import (
     certify,
     problem_frontier,
 )
-from tracker.kernels.components import Components, label_components
+from tracker.kernels.components import label_components
 from tracker.kernels.margin import margins
 
 
 class Solution(NamedTuple):
     """Everything that is known about the optimum of one frame."""
 
-    components: Components
     answer: Assignment
     row_margin: NDArray[np.float64]  # (n,) nan where margins were not asked for
     column_margin: NDArray[np.float64]  # (m,)
     weakest: int  # component whose proof is worst relative to its scale, -1 in an empty frame
     gap: float  # its gap …
     violation: float  # … and its violation of feasibility, relative to its scale
+    components: int  # how many there are; `label_components` says which
 
 
 @njit(cache=True)
@@ -65,4 +65,5 @@ def solve(problem: Problem, want_margins: bool) -> Solution:
     else:
         row_margin = np.full(len(problem.miss), np.nan)
         column_margin = np.full(len(problem.new), np.nan)
-    return Solution(components, answer, row_margin, column_margin, weakest, gap, violation)
+    count = len(components.candidates)
+    return Solution(answer, row_margin, column_margin, weakest, gap, violation, count)
