@@ -149,6 +149,18 @@ def test_identity_and_births_follow_the_best_assignment():
         assert len(result) == 0 or np.linalg.eigvalsh(engine.table.covariance).min() > 0.0
 
 
+def test_beyond_the_exact_limit_the_best_assignments_stand_for_all():
+    limits = {"mode": "joint-probabilistic", "exact_limit": 2, "ranked": 20}
+    engine = Engine(joint(association=limits), "point")
+    rng = np.random.default_rng(4)
+    left_out = []
+    for k in range(10):
+        result = engine.step(Frame.of_points(k + 1, k / 10, rng.uniform(0, 3, (6, 2))))
+        left_out += [*result.marginals[0].left_out]
+        assert np.linalg.eigvalsh(engine.table.covariance).min() > 0.0
+    assert 0.0 < max(left_out) < 1.0
+
+
 def test_boxes_too():
     engine = Engine(settings_from({"association": {"mode": "joint-probabilistic"}}), "box")
     for k in range(10):

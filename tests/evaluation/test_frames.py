@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 
-from tests.evaluation.made import make_tracks, make_truth, standing
-from tracker.evaluation.frames import aligned_frames, frame_pairs
+from tests.evaluation.made import make_tracks, make_truth, random_scene, standing
+from tracker.evaluation.frames import aligned_frames, side_by_side
 
 FIVE = np.arange(1, 6)
 
@@ -63,10 +63,48 @@ def test_one_frame_of_tracks():
     assert aligned_frames(tracks, truth_at([4, 5], [7.0, 7.1])).tolist() == [4, 5]
 
 
-def test_pairs_hold_rows_of_unsorted_files():
+def test_two_truth_times_near_one_frame_of_tracks():
+    # A truth at twice the rate: the nearer row takes the frame, the other stands alone.
+    tracks = tracks_at([1, 2, 3], [100.1, 100.2, 100.3])
+    truth = truth_at([1, 2, 3], [100.1, 100.14, 100.2])
+    frames = aligned_frames(tracks, truth).tolist()
+    assert (frames[0], frames[2]) == (1, 2)
+    assert frames[1] > 3
+
+
+def test_rows_of_unsorted_files():
     tracks = make_tracks(standing([3, 1, 2], 1))
     truth = make_truth(standing([2, 4, 1], 7))
-    pairs = frame_pairs(tracks, truth, np.array([True, True, False]))
-    assert [pair.number for pair in pairs] == [1, 2, 3, 4]
-    assert [pair.truth_row.tolist() for pair in pairs] == [[2], [0], [], [1]]
-    assert [pair.track_row.tolist() for pair in pairs] == [[1], [], [0], []]
+    counted = np.array([True, True, False])
+    both = side_by_side(tracks, truth, counted, least_iou=0.5, reach=np.inf)
+    assert both.numbers.tolist() == [1, 2, 3, 4]
+    assert both.truth_row.tolist() == [2, 0, 1]
+    assert both.scene.truth_start.tolist() == [0, 1, 2, 2, 3]
+    assert both.track_row.tolist() == [1, 0]
+    assert both.scene.track_start.tolist() == [0, 1, 1, 2, 2]
+    assert both.scene.pair_start.tolist() == [0, 1, 1, 1]
+
+
+def test_rows_are_taken_out_with_their_pairs():
+    tracks, truth = random_scene(5, frames=10)
+    counted = np.ones(len(tracks), np.bool_)
+    both = side_by_side(tracks, truth, counted, least_iou=0.1, reach=np.inf)
+    rng = np.random.default_rng(1)
+    keep_truth, keep_track = rng.random(len(truth)) < 0.6, rng.random(len(tracks)) < 0.6
+    less = both.only_rows(keep_truth, keep_track)
+    assert less.truth_row.tolist() == both.truth_row[keep_truth].tolist()
+
+    def pairs(side):
+        scene = side.scene
+        row = np.repeat(side.truth_row, np.diff(scene.pair_start))
+        return dict(
+            zip(zip(row, side.track_row[scene.pair_row], strict=True), scene.distance, strict=True)
+        )
+
+    wanted = {
+        (t, j): value
+        for (t, j), value in pairs(both).items()
+        if t in less.truth_row and j in less.track_row
+    }
+    assert pairs(less) == wanted
+    assert len(wanted) > 10

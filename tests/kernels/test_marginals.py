@@ -9,6 +9,7 @@ from numba import config
 from tests.kernels.problems import DEGENERATE, full, random_problems, sparse
 from tests.reference import elimination as exact_twin
 from tests.reference import marginals as twin
+from tracker.kernels.components import label_components
 from tracker.kernels.elimination import exact_marginals
 from tracker.kernels.marginals import marginals, ranked_marginals
 from tracker.kernels.part import event_weights
@@ -27,11 +28,9 @@ def exact(allowed, cost, miss, new, limit=12):
 def whole(allowed, cost, miss, new, limit=12, ranked=100):
     """Marginals component by component."""
     problem = sparse(allowed, cost, miss, new)
-    solution = solve(problem, False)
-    answer = solution.answer
-    return marginals(
-        problem, solution.components, answer.row_price, answer.column_price, limit, ranked
-    )
+    answer = solve(problem, False).answer
+    components = label_components(problem.start, problem.column, len(problem.new))
+    return marginals(problem, components, answer.row_price, answer.column_price, limit, ranked)
 
 
 def check(allowed, found, expected, tolerance):

@@ -2,18 +2,20 @@
 
 from __future__ import annotations
 
+import itertools
+
 from tests.reference.matching import cheapest_matching
 
 
 def pair_over_time(scene, keep, partner, match, first):
     frames = len(scene.truth_start) - 1
     for f in range(first, frames):
-        if settle_frame(scene, keep, partner, match, f):
+        if settle_frame(scene, keep, partner, match, f, False):
             return f
     return frames
 
 
-def settle_frame(scene, keep, partner, match, f):
+def settle_frame(scene, keep, partner, match, f, any_answer):
     rows = range(scene.truth_start[f], scene.truth_start[f + 1])
     tracks = range(scene.track_start[f], scene.track_start[f + 1])
     for t in rows:
@@ -34,6 +36,8 @@ def settle_frame(scene, keep, partner, match, f):
         return False
     reward = 2 * min(len(rows), len(tracks)) * (max(cost) + 1) + 1
     chosen, tied = cheapest_matching(start, column, cost, len(tracks), reward, 1e-12 * reward)
+    if tied and not any_answer:
+        return True
     for t, e in zip(rows, chosen, strict=True):
         if e >= 0:
             match[t] = origin[e]
@@ -59,7 +63,7 @@ def count_lifetimes(scene, match, objects):
         seen = [track for track in tracks if track is not None]
         rows.append(len(mine))
         paired.append(len(seen))
-        switches.append(sum(a != b for a, b in zip(seen, seen[1:], strict=False)))
+        switches.append(sum(a != b for a, b in itertools.pairwise(seen)))
         word = "".join("." if track is None else "x" for track in tracks).strip(".")
         gaps.append(sum(part != "" for part in word.split("x")))
     return rows, paired, switches, gaps

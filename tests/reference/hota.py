@@ -33,7 +33,9 @@ def true_positives(scene, alpha):
         last = scene.pair_start[scene.truth_start[f + 1]]
         here = [pair for pair in possible if first <= pair[2] < last]
         weight = {
-            pair: 1 / EPSILON + accuracy(scene, possible, pair) + EPSILON * scene.similarity[pair[2]]
+            pair: 1 / EPSILON
+            + accuracy(scene, possible, pair)
+            + EPSILON * scene.similarity[pair[2]]
             for pair in here
         }
         best, score = (), 0.0

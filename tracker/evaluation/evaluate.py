@@ -6,14 +6,13 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
-import numpy as np
-
-from tracker.errors import InputError
-from tracker.evaluation.frames import FramePair
-from tracker.evaluation.referee import referee_counts
-from tracker.evaluation.scope import Scope, scored_pairs
+from tracker.evaluation import referee
+from tracker.evaluation.counts import count
+from tracker.evaluation.couples import find_couples
+from tracker.evaluation.hota import HotaCounts, count_hota
+from tracker.evaluation.scope import Scope, close_pairs, scored_rows
 from tracker.evaluation.scores import Counts, Scores
-from tracker.log.model import Ints, Truth
+from tracker.log.model import Truth
 from tracker.results.tracks import Tracks
 
 
@@ -25,10 +24,11 @@ class Evaluation:
 
     @property
     def overall(self) -> Scores:
-        total = Counts()
+        counts, hota = Counts(), HotaCounts.none()
         for scores in self.sequences.values():
-            total += scores.counts
-        return Scores(total)
+            counts += scores.counts
+            hota += scores.hota_counts
+        return Scores(counts, hota)
 
     def as_dict(self) -> dict[str, Any]:
         """What `margent evaluate --json` prints."""
@@ -38,46 +38,36 @@ class Evaluation:
         }
 
 
-def evaluate(tracks: Tracks, truth: Truth, scope: Scope | None = None) -> Scores:
-    """Score one sequence (CLEAR MOT and identity metrics, counted by motmetrics).
+def evaluate(
+    tracks: Tracks, truth: Truth, scope: Scope | None = None, *, with_referee: bool = True
+) -> Scores:
+    """Score one sequence: CLEAR MOT, identity metrics and HOTA.
 
-    Raises UsageError where tracks and truth do not fit together, InputError where a track is
-    twice in a frame.
+    with_referee : whether motmetrics counts too and has to agree.
+
+    Raises UsageError where tracks and truth do not fit together, InputError where a track or
+    object is twice in a frame, InternalError where the referee counts otherwise.
     """
     scope = scope or Scope()
-    pairs = scored_pairs(tracks, truth, scope)
-    for pair in pairs:
-        _refuse_twins(pair, tracks, truth)
-    return Scores(referee_counts(pairs, tracks.kind, scope))
-
-
-def _refuse_twins(pair: FramePair, tracks: Tracks, truth: Truth) -> None:
-    track = _repeated(pair.track)
-    if track is not None:
-        raise InputError(
-            f"track {track} is twice in frame {pair.number} of '{tracks.name}'",
-            remedy="Every track may have one row a frame.",
-        )
-    thing = _repeated(pair.truth)
-    if thing is not None:
-        raise InputError(
-            f"object '{truth.object_names[thing]}' is twice in frame {pair.number}",
-            path=truth.path,
-            remedy="Every object may have one row a frame.",
-        )
-
-
-def _repeated(identities: Ints) -> int | None:
-    """The first identity that is there more than once."""
-    ordered = np.sort(identities)
-    twin = np.flatnonzero(ordered[1:] == ordered[:-1])
-    return int(ordered[twin[0]]) if len(twin) else None
+    both = scored_rows(tracks, truth, scope)
+    close = close_pairs(both, truth.kind, scope)
+    couples = find_couples(both)
+    counts = count(both, couples, close)
+    if with_referee:
+        referee.check(counts, both.only_pairs(close), tracks.name)
+    return Scores(counts, count_hota(both, couples))
 
 
 def evaluate_all(
-    sequences: Mapping[str, tuple[Tracks, Truth]], scope: Scope | None = None
+    sequences: Mapping[str, tuple[Tracks, Truth]],
+    scope: Scope | None = None,
+    *,
+    with_referee: bool = True,
 ) -> Evaluation:
     """Score several sequences by name. Raises what `evaluate` raises."""
     return Evaluation(
-        {name: evaluate(tracks, truth, scope) for name, (tracks, truth) in sequences.items()}
+        {
+            name: evaluate(tracks, truth, scope, with_referee=with_referee)
+            for name, (tracks, truth) in sequences.items()
+        }
     )

@@ -103,7 +103,8 @@ def side_by_side(
         )
     numbers = np.union1d(truth_frame, track_frame)
     starts = [
-        np.append(np.searchsorted(frame, numbers), len(frame)) for frame in (truth_frame, track_frame)
+        np.append(np.searchsorted(frame, numbers), len(frame))
+        for frame in (truth_frame, track_frame)
     ]
     z = np.ascontiguousarray(truth.z[truth_row]), np.ascontiguousarray(tracks.z[track_row])
     if truth.kind is Kind.BOX:

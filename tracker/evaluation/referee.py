@@ -3,20 +3,22 @@
 Its traps are kept out here: it gets our own distances (its IoU fails with numpy 2), ids as dense
 small integers (it passes them through float), frames in order without repeats, a fixed solver, and
 no empty input (which would give not-a-number).
+
+It keeps every event of a sequence in lists and tables, and for the identity metrics dense matrices
+of all objects by all tracks: see `scripts/benchmark_evaluation.py` for the size where that ends.
 """
 
 from __future__ import annotations
 
+import math
 import warnings
-from collections.abc import Iterable
+from dataclasses import asdict
 
 import numpy as np
 
-from tracker.evaluation.distance import distances
-from tracker.evaluation.frames import FramePair
-from tracker.evaluation.scope import Scope
+from tracker.errors import InternalError
 from tracker.evaluation.scores import Counts
-from tracker.log.model import Kind
+from tracker.kernels.clearmot import Scene
 
 METRICS = {
     "frames": "num_frames",
@@ -37,26 +39,48 @@ METRICS = {
 }
 
 
-def referee_counts(pairs: Iterable[FramePair], kind: Kind, scope: Scope) -> Counts:
-    """Count one sequence. Frames come in order; frames without any row are left out."""
-    filled = [pair for pair in pairs if len(pair.truth) or len(pair.track)]
-    truth_boxes = sum(len(pair.truth) for pair in filled)
-    track_boxes = sum(len(pair.track) for pair in filled)
+def check(found: Counts, scene: Scene, sequence: str) -> None:
+    """Raise InternalError if motmetrics counts otherwise; `scene` has the pairs that may match.
+
+    Distances are compared up to rounding of their sum, counts exactly.
+    """
+    mine, theirs = asdict(found), asdict(referee_counts(scene))
+    differ = [
+        f"{name} {mine[name]} against {theirs[name]}"
+        for name in mine
+        if not (
+            math.isclose(mine[name], theirs[name], rel_tol=1e-9, abs_tol=1e-9)
+            if isinstance(mine[name], float)
+            else mine[name] == theirs[name]
+        )
+    ]
+    if differ:
+        raise InternalError(
+            f"'{sequence}': our counts and the referee's (motmetrics) differ: {', '.join(differ)}"
+        )
+
+
+def referee_counts(scene: Scene) -> Counts:
+    """Count one sequence. Frames without any row are left out."""
+    truth_boxes, track_boxes = len(scene.truth), len(scene.track)
+    filled = np.flatnonzero(np.diff(scene.truth_start) + np.diff(scene.track_start))
     if not truth_boxes or not track_boxes:
-        return _one_sided(filled, truth_boxes, track_boxes)
+        return _one_sided(len(filled), scene)
     with warnings.catch_warnings():
         warnings.simplefilter("ignore")  # pandas' about motmetrics' code, nothing of ours
         import motmetrics as mm
 
         accumulator = mm.MOTAccumulator()
-        identities = np.unique(np.concatenate([pair.track for pair in filled]))
         with mm.lap.set_default_solver("scipy"):
-            for number, pair in enumerate(filled):
+            for number, f in enumerate(filled.tolist()):
+                a, b = int(scene.truth_start[f]), int(scene.truth_start[f + 1])
+                c, d = int(scene.track_start[f]), int(scene.track_start[f + 1])
+                pairs = slice(int(scene.pair_start[a]), int(scene.pair_start[b]))
+                distance = np.full((b - a, d - c), np.nan)
+                row = np.repeat(np.arange(b - a), np.diff(scene.pair_start[a : b + 1]))
+                distance[row, scene.pair_row[pairs] - c] = scene.distance[pairs]
                 accumulator.update(
-                    pair.truth.tolist(),
-                    np.searchsorted(identities, pair.track).tolist(),
-                    distances(pair, kind, scope.iou_threshold, scope.distance_threshold),
-                    frameid=number,
+                    scene.truth[a:b].tolist(), scene.track[c:d].tolist(), distance, frameid=number
                 )
             found = mm.metrics.create().compute(
                 accumulator,
@@ -69,11 +93,12 @@ def referee_counts(pairs: Iterable[FramePair], kind: Kind, scope: Scope) -> Coun
     return Counts(**values, distance_sum=distance_sum)
 
 
-def _one_sided(pairs: list[FramePair], truth_boxes: int, track_boxes: int) -> Counts:
+def _one_sided(frames: int, scene: Scene) -> Counts:
     """Nothing to pair: all annotated rows are missed, all reported rows are wrong."""
-    objects = len({identity for pair in pairs for identity in pair.truth.tolist()})
+    objects = len(np.unique(scene.truth))
+    truth_boxes, track_boxes = len(scene.truth), len(scene.track)
     return Counts(
-        frames=len(pairs),
+        frames=frames,
         objects=objects,
         truth_boxes=truth_boxes,
         track_boxes=track_boxes,

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from tracker.errors import UsageError
 from tracker.evaluation.clearmot import pair_frames
 from tracker.evaluation.frames import SideBySide, side_by_side
-from tracker.evaluation.scores import THRESHOLDS
+from tracker.evaluation.hota import THRESHOLDS
 from tracker.log.model import Kind, Truth
 from tracker.results.tracks import Tracks, TrackState
 
@@ -82,31 +82,33 @@ def scored_rows(tracks: Tracks, truth: Truth, scope: Scope) -> SideBySide:
         tracks,
         truth,
         _reported(tracks, scope.count_coasting),
-        least_iou=min(scope.iou_threshold, THRESHOLDS[0]),
+        least_iou=min(scope.iou_threshold, float(THRESHOLDS[0])),
         reach=scope.distance_threshold or math.inf,
     )
     keep_truth = scored[both.truth_row]
     keep_track = np.ones(len(both.track_row), np.bool_)
     if ignored.any():
-        keep_track = ~_on(both, ignored[both.truth_row], scope)
+        keep_track = ~_on(both, ignored[both.truth_row], truth.kind, scope)
     if keep_truth.all() and keep_track.all():
         return both
     return both.only_rows(keep_truth, keep_track)
 
 
-def close_pairs(both: SideBySide, scope: Scope) -> NDArray[np.bool_]:
+def close_pairs(both: SideBySide, kind: Kind, scope: Scope) -> NDArray[np.bool_]:
     """(E,) which pairs CLEAR MOT and the identity metrics may use (HOTA has its own thresholds)."""
-    if scope.distance_threshold is not None and both.scene.distance.size:
-        return both.scene.distance <= scope.distance_threshold
+    if kind is Kind.POINT:
+        return np.ones(len(both.scene.distance), np.bool_)
     return both.scene.similarity >= scope.iou_threshold
 
 
-def _on(both: SideBySide, ignored: NDArray[np.bool_], scope: Scope) -> NDArray[np.bool_]:
+def _on(
+    both: SideBySide, ignored: NDArray[np.bool_], kind: Kind, scope: Scope
+) -> NDArray[np.bool_]:
     """(M,) tracks that lie on ignored truth, by one joint matching of all rows of a frame.
 
     All annotated rows compete, so a track on a scored object beside an ignored one stays.
     """
-    scene = both.only_pairs(close_pairs(both, scope))
+    scene = both.only_pairs(close_pairs(both, kind, scope))
     match = pair_frames(scene, both.objects, keep=False)
     hit = ignored & (match >= 0)
     out = np.zeros(len(both.track_row), np.bool_)

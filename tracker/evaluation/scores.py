@@ -9,6 +9,8 @@ from __future__ import annotations
 from dataclasses import asdict, dataclass, fields
 from typing import Any
 
+from tracker.evaluation.hota import HotaCounts
+
 
 @dataclass(frozen=True, slots=True)
 class Counts:
@@ -43,6 +45,7 @@ class Scores:
     """Scores of one sequence or of several together; ratios are between 0 and 1, or None."""
 
     counts: Counts
+    hota_counts: HotaCounts
 
     @property
     def mota(self) -> float | None:
@@ -85,7 +88,9 @@ class Scores:
     def as_dict(self) -> dict[str, Any]:
         """All scores and counts by name, as `margent evaluate --json` prints them."""
         ratios = {name: getattr(self, name) for name in RATIOS}
-        return ratios | asdict(self.counts)
+        means = self.hota_counts.means()
+        by_threshold = {"hota_by_threshold": self.hota_counts.by_threshold()}
+        return ratios | means | asdict(self.counts) | by_threshold
 
 
 RATIOS = ("mota", "motp", "idf1", "idp", "idr", "precision", "recall")

@@ -58,21 +58,29 @@ def pair_over_time(
     partner : (O,) track each object was paired with last, -1 for none; brought up to date.
     match : (T,) pair of each annotated row, -1 for none; filled.
 
-    Returns the frame whose leftover has a tie (its kept pairs are filled in; the answer found is
-    too, but is one of several), or F at the end.
+    Returns the frame whose leftover has a tie, with nothing but its kept pairs filled in, or F at
+    the end.
     """
     frames = len(scene.truth_start) - 1
     for f in range(first, frames):
-        if settle_frame(scene, keep, partner, match, f):
+        if settle_frame(scene, keep, partner, match, f, False):
             return f
     return frames
 
 
 @njit(cache=True)
 def settle_frame(
-    scene: Scene, keep: bool, partner: NDArray[np.int64], match: NDArray[np.int64], f: int
+    scene: Scene,
+    keep: bool,
+    partner: NDArray[np.int64],
+    match: NDArray[np.int64],
+    f: int,
+    any_answer: bool,
 ) -> bool:
-    """Pair one frame, as `pair_over_time`; returns whether its leftover has a tie."""
+    """Pair one frame, as `pair_over_time`; returns whether its leftover has a tie.
+
+    any_answer : whether to pair the leftover even then.
+    """
     a, b = scene.truth_start[f], scene.truth_start[f + 1]
     c, d = scene.track_start[f], scene.track_start[f + 1]
     match[a:b] = -1
@@ -107,6 +115,8 @@ def settle_frame(
     chosen, tied = cheapest_matching(
         start, column[:count], cost[:count], d - c, reward, TIE * reward
     )
+    if tied and not any_answer:
+        return True
     for t in range(a, b):
         e = chosen[t - a]
         if e >= 0:

@@ -1,0 +1,282 @@
+"""The component that a decision was taken in, and what other answers would have cost.
+
+Nothing is decided here. The chosen answer comes from the ledger; other answers are measured
+against it by solving the same component once more with one pair imposed or one side left out.
+Where the ledger kept only what was chosen, the candidates are found again from predictions and
+detections by the rule of the tier, and the costs of the chosen pairs must come out as recorded.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import msgspec
+import numpy as np
+
+from tracker.association import AssociationRule, CandidatePairs
+from tracker.association.cost import candidate_costs
+from tracker.association.rule import association_rules
+from tracker.association.terms import TERMS, registered_costs
+from tracker.diagnosis.explanation import LEDGER, RECOMPUTED, Change
+from tracker.diagnosis.frame_record import FrameRecord
+from tracker.kernels.assignment import Problem
+from tracker.kernels.gate import GATE_OK, gate_candidates
+from tracker.kernels.solve import solve
+from tracker.lifecycle.table import TrackTable
+from tracker.log.model import Floats, Frame, Ints, Kind
+from tracker.settings.schema import CostSettings, Settings
+
+# Terms that follow from what predictions.parquet and detections.parquet hold.
+GEOMETRIC_TERMS = ("overlap", "generalised-overlap", "mahalanobis", "likelihood")
+
+# Costs found again are the same operations on the same numbers; this allows for their order.
+SAME_COST = 1e-9
+
+
+@dataclass(frozen=True, slots=True)
+class Rules:
+    """The run's rule of each tier, and whether its costs can be worked out again."""
+
+    tiers: tuple[AssociationRule, ...]
+    repeatable: tuple[bool, ...]
+    coupled: bool
+
+
+def read_rules(settings: Settings, kind: Kind) -> Rules:
+    """The rules of a run, also where it used cost functions that are not registered here."""
+
+    def known(cost: CostSettings) -> CostSettings:
+        terms = tuple(
+            name for name in cost.terms if name in ("auto", *TERMS) or name in registered_costs()
+        )
+        return msgspec.structs.replace(cost, terms=terms or ("auto",))
+
+    tiers = tuple(
+        msgspec.structs.replace(tier, cost=known(tier.cost)) if tier.cost else tier
+        for tier in settings.tiers
+    )
+    readable = msgspec.structs.replace(settings, cost=known(settings.cost), tiers=tiers)
+    rules = association_rules(readable, kind)
+    repeatable = tuple(
+        set((tier.cost or settings.cost).terms) <= {"auto", *GEOMETRIC_TERMS}
+        for tier in settings.tiers
+    )
+    return Rules(rules, repeatable, settings.association.mode == "joint-probabilistic")
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Contest:
+    """One component of one tier. Rows are `tracks`, columns `detections`, E candidates.
+
+    cost, distance, overlap, force_cost : (E,); costs are nan where unknown, force costs where the
+    ledger has none.   row : (E,) row of each candidate.   held : (n,) chosen column, -1 for none.
+    problem : None if costs are unknown.
+    """
+
+    rule: AssociationRule
+    tracks: Ints
+    detections: Ints
+    row: Ints
+    column: Ints
+    cost: Floats
+    terms: dict[str, Floats]
+    distance: Floats
+    overlap: Floats
+    force_cost: Floats
+    held: Ints
+    source: str
+    problem: Problem | None
+
+    def candidates_of(self, *, track: int | None = None, detection: int | None = None) -> Ints:
+        """Candidates of a track or of a detection, or of both."""
+        wanted = np.ones(len(self.row), np.bool_)
+        if track is not None:
+            wanted &= self.tracks[self.row] == track
+        if detection is not None:
+            wanted &= self.detections[self.column] == detection
+        return np.flatnonzero(wanted)
+
+    def with_pair(self, e: int) -> tuple[float, Ints]:
+        """Best answer that contains candidate e: how much worse, and what rows then hold."""
+        i, j = self.row[e], self.column[e]
+        held = self._best((self.row != i) & (self.column != j))
+        held[i] = j
+        return self._excess(held), held
+
+    def without_track(self, track: int) -> tuple[float, Ints]:
+        """Best answer in which a track is missed."""
+        held = self._best(self.tracks[self.row] != track)
+        return self._excess(held), held
+
+    def without_detection(self, detection: int) -> tuple[float, Ints]:
+        """Best answer in which a detection is left over."""
+        held = self._best(self.detections[self.column] != detection)
+        return self._excess(held), held
+
+    def changes(self, held: Ints) -> tuple[Change, ...]:
+        """How an answer differs from the chosen one, tracks first, then what is left over."""
+        different = np.flatnonzero(held != self.held)
+        found = [
+            Change(int(self.tracks[i]), self._number(self.held[i]), self._number(held[i]))
+            for i in different
+        ]
+        freed = set(self.held[self.held >= 0].tolist()) - set(held[held >= 0].tolist())
+        return (*found, *(Change(None, self._number(j), None) for j in sorted(freed)))
+
+    def _number(self, column: int) -> int | None:
+        return int(self.detections[column]) if column >= 0 else None
+
+    def _best(self, allowed: np.ndarray) -> Ints:
+        assert self.problem is not None
+        counts = np.bincount(self.row[allowed], minlength=len(self.tracks))
+        part = self.problem._replace(
+            start=np.concatenate(([0], np.cumsum(counts))).astype(np.int64),
+            column=self.column[allowed],
+            cost=self.cost[allowed],
+        )
+        return solve(part, False).answer.row_column.copy()
+
+    def _excess(self, held: Ints) -> float:
+        """Cost of an answer minus the cost of the chosen one, over what differs."""
+        different = np.flatnonzero(held != self.held)
+        return max(0.0, self._total(held, different) - self._total(self.held, different))
+
+    def _total(self, held: Ints, rows: Ints) -> float:
+        """Cost of some rows; new costs are all 0."""
+        assert self.problem is not None
+        total = 0.0
+        for i in rows:
+            if held[i] < 0:
+                total += self.problem.miss[i]
+            else:
+                e = np.flatnonzero((self.row == i) & (self.column == held[i]))
+                total += self.cost[e[0]]
+        return float(total)
+
+
+def read_contest(
+    record: FrameRecord, rules: Rules, tier: int, component: int, *, recorded: bool
+) -> Contest:
+    """Collect a component of a tier.
+
+    recorded : whether the ledger has all of its candidates; else they are found again.
+    """
+    rows = record.decisions
+    own = rows.where((rows.tier == tier) & (rows.component == component))
+    tracks = np.unique(rows.track[own][rows.track[own] >= 0])
+    detections = np.unique(rows.detection[own][rows.detection[own] >= 0])
+    pairs = own[rows.decision[own] == "pair"]
+    order = np.lexsort((rows.detection[pairs], rows.track[pairs]))
+    pairs = pairs[order]
+    held = np.full(len(tracks), -1, np.int64)
+    chosen = pairs[rows.chosen[pairs]]
+    held[np.searchsorted(tracks, rows.track[chosen])] = np.searchsorted(
+        detections, rows.detection[chosen]
+    )
+    rule = rules.tiers[tier]
+    if not recorded:
+        return _found_again(record, rules, tier, tracks, detections, held, chosen)
+    cost = rows.cost[pairs]
+    row = np.searchsorted(tracks, rows.track[pairs])
+    column = np.searchsorted(detections, rows.detection[pairs])
+    return Contest(
+        rule=rule,
+        tracks=tracks,
+        detections=detections,
+        row=row,
+        column=column,
+        cost=cost,
+        terms={name: values[pairs] for name, values in rows.terms.items()},
+        distance=rows.distance[pairs],
+        overlap=rows.overlap[pairs],
+        force_cost=np.where(rows.chosen[pairs], 0.0, rows.force_cost[pairs]),
+        held=held,
+        source=LEDGER,
+        problem=_problem(rule, row, column, cost, len(tracks), len(detections)),
+    )
+
+
+def _found_again(
+    record: FrameRecord,
+    rules: Rules,
+    tier: int,
+    tracks: Ints,
+    detections: Ints,
+    held: Ints,
+    chosen: Ints,
+) -> Contest:
+    """The component with candidates from predictions and detections, costs too if they can be."""
+    rule = rules.tiers[tier]
+    at = np.searchsorted(record.track, tracks)
+    estimate = np.ascontiguousarray(record.estimate[at])
+    covariance = np.ascontiguousarray(record.covariance[at])
+    z = np.ascontiguousarray(record.z[detections])
+    variance = np.ascontiguousarray(record.variance[detections])
+    status, _, candidates = gate_candidates(
+        estimate,
+        covariance,
+        z,
+        variance,
+        rule.threshold,
+        rule.overlap_floor,
+        rule.boxes,
+        rules.coupled,
+        rule.candidate_limit,
+    )
+    assert status == GATE_OK, "the run gated these before"
+    row = np.repeat(np.arange(len(tracks)), np.diff(candidates.start))
+    cost = np.full(len(row), np.nan)
+    terms: dict[str, Floats] = {}
+    if rules.repeatable[tier]:
+        table = TrackTable(z.shape[1])
+        empty = np.full(len(tracks), np.nan)
+        table.append(estimate, covariance, empty, np.full(len(tracks), -1, np.int32), 0.0)
+        frame = Frame(
+            number=record.number,
+            time=record.time or 0.0,
+            z=z,
+            score=record.score[detections],
+            label=np.full(len(z), -1, np.int32),
+            line=record.line[detections],
+        )
+        values, cost = candidate_costs(rule, CandidatePairs(candidates, table, frame, None, None))
+        terms = dict(zip(rule.terms, values, strict=True))
+    kept = record.decisions.cost[chosen]
+    chosen_rows = np.searchsorted(tracks, record.decisions.track[chosen])
+    again = np.full(len(chosen), np.nan)
+    for k, i in enumerate(chosen_rows):
+        e = np.flatnonzero((row == i) & (candidates.column == held[i]))
+        again[k] = cost[e[0]] if len(e) else np.nan
+    same = np.allclose(again, kept, rtol=SAME_COST, atol=SAME_COST)
+    if not same:
+        cost, terms = np.full(len(row), np.nan), {}
+    return Contest(
+        rule=rule,
+        tracks=tracks,
+        detections=detections,
+        row=row,
+        column=candidates.column.copy(),
+        cost=cost,
+        terms=terms,
+        distance=candidates.distance.copy(),
+        overlap=candidates.overlap.copy(),
+        force_cost=np.full(len(row), np.nan),
+        held=held,
+        source=RECOMPUTED,
+        problem=_problem(rule, row, candidates.column, cost, len(tracks), len(detections))
+        if same and not np.isnan(cost).any()
+        else None,
+    )
+
+
+def _problem(
+    rule: AssociationRule, row: Ints, column: Ints, cost: Floats, tracks: int, detections: int
+) -> Problem:
+    counts = np.bincount(row, minlength=tracks)
+    return Problem(
+        np.concatenate(([0], np.cumsum(counts))).astype(np.int64),
+        np.ascontiguousarray(column),
+        np.ascontiguousarray(cost),
+        np.full(tracks, rule.miss),
+        np.zeros(detections),
+    )
