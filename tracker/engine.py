@@ -230,7 +230,11 @@ class Engine:
     def _correct_jointly(
         self, tiers: tuple[TierDecision, ...], frame: Frame, variance: Floats
     ) -> tuple[Marginals, ...]:
-        """Correct each track by all detections that might be its own, as probable as they are."""
+        """Correct each track by all detections that might be its own, as probable as they are.
+
+        That is all the mode changes: which detection a track is paired with, and so births,
+        hits, lifecycle, ledger and proof, stays with the best assignment.
+        """
         table, how = self.table, self.settings.association
         shares = tuple(tier_marginals(tier, how.exact_limit, how.ranked) for tier in tiers)
         alternatives = mixture(tiers, shares, len(table))

@@ -71,7 +71,7 @@ def test_degenerate_shapes(rank, name):
         check(*rank(allowed, cost, miss, new, k), expected, k)
 
 
-def test_event_bound_is_one():
+def test_event_bound_is_not_below_the_count():
     for allowed, cost, miss, new in random_problems(200, seed=52, largest=5):
         bound = event_bound(sparse(allowed, cost, miss, new))
         assert bound >= twin.event_bound(allowed)

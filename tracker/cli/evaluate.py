@@ -49,11 +49,19 @@ def evaluate(
     coasting: Annotated[
         str, typer.Option(help="Count coasting rows: 'as-reported', 'yes' or 'no'.")
     ] = "as-reported",
+    referee: Annotated[
+        str,
+        typer.Option(
+            help="'on': motmetrics counts too and must agree. 'off': for sizes beyond its memory "
+            "(about 1 GB for every million of pairs that could match, and 24 bytes for every "
+            "square of objects + tracks)."
+        ),
+    ] = "on",
     json_: Annotated[bool, typer.Option("--json", help="Print JSON instead of a table.")] = False,
 ) -> None:
-    """Score tracks against truth: MOTA, MOTP (a distance), IDF1, switches and the rest.
+    """Score tracks against truth: HOTA, MOTA, MOTP (a distance), IDF1, switches and the rest.
 
-    Counted by motmetrics. Truth in the public benchmark layout with classes is scored on class 1,
+    Truth in the public benchmark layout with classes is scored on class 1,
     with classes 2, 7, 8 and 12 ignored, unless classes are chosen. Track rows in frames that the
     truth does not reach count as false positives.
 
@@ -65,6 +73,8 @@ def evaluate(
     counted = {"as-reported": None, "yes": True, "no": False}
     if coasting not in counted:
         raise UsageError(f"--coasting takes 'as-reported', 'yes' or 'no', found {coasting!r}")
+    if referee not in ("on", "off"):
+        raise UsageError(f"--referee takes 'on' or 'off', found {referee!r}")
     scope = Scope(
         iou_threshold,
         distance_threshold,
@@ -79,6 +89,7 @@ def evaluate(
             for name, path in _read_truths(truth, list(sequences)).items()
         },
         scope,
+        with_referee=referee == "on",
     )
     if json_:
         typer.echo(json.dumps(found.as_dict(), indent=2))

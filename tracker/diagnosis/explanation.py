@@ -53,8 +53,9 @@ class Alternative:
     """One way to decide about a track or a detection.
 
     decision : 'pair', 'miss' or 'new'.   force_cost : how much worse the best answer with this is
-    than the chosen one, 0 for what was chosen.   held_by : the other track that has the detection.
-    changes : what the best answer with this would have changed, empty where it was not worked out.
+    than the chosen one, 0 for what was chosen.   held_by : the other track that was given this
+    detection.   holds : the other detection that this track was given.   changes : what the best
+    answer with this would have changed; worked out for runner-up and 'why not', else empty.
     """
 
     decision: str
@@ -69,6 +70,7 @@ class Alternative:
     force_cost: float | None
     odds: str
     held_by: int | None
+    holds: int | None
     changes: tuple[Change, ...]
     source: str
 
@@ -176,7 +178,11 @@ class DetectionView:
 
 @dataclass(frozen=True, slots=True)
 class Moment:
-    """A track in one frame before or after. margin : None if nothing could replace the decision."""
+    """A track in one frame before or after.
+
+    decision : 'pair', 'miss', 'born', 'ended' (before anything was decided) or 'took no part' (in
+    any tier).   margin : None if nothing could replace the decision.
+    """
 
     frame: int
     time: float | None
@@ -187,6 +193,7 @@ class Moment:
     margin: float | None
     odds: str
     contested: bool
+    confidence: float | None
     events: tuple[str, ...]
 
 

@@ -8,10 +8,12 @@ from dataclasses import dataclass
 
 from tracker.diagnosis.explanation import Moment
 from tracker.diagnosis.ledger_reading import Event, RunLedger
-from tracker.diagnosis.odds import odds
+from tracker.diagnosis.words import odds
 from tracker.results.tracks import TrackState
 
 EVENTS_TOLD = 4  # that many changes of state are told of what came after
+
+DECISION_COLUMNS = ("frame", "time", "track", "decision", "detection", "line", "chosen", "margin")
 
 
 @dataclass(frozen=True, slots=True)
@@ -48,17 +50,20 @@ def afterwards(life: Life, frame: int) -> str:
     """What became of a track after a frame, in words."""
     later = [event for event in life.events if event.frame > frame]
     if not later:
-        if life.ended is not None and life.ended <= frame:
-            return "it had ended"
-        return "its state did not change any more before the run's end"
-    told = [f"{event.reason} in frame {event.frame}" for event in later[:EVENTS_TOLD]]
+        over = life.ended is not None and life.ended <= frame
+        return "it was over" if over else "its state did not change before the run's end"
+    told = [_phrase(event) for event in later[:EVENTS_TOLD]]
     if len(later) > EVENTS_TOLD:
         told.append("…")
-    if life.ended is not None and len(later) > EVENTS_TOLD:
-        told.append(f"ended in frame {life.ended} ({later[-1].reason})")
-    elif life.ended is not None:
-        told[-1] = f"ended in frame {life.ended} ({later[-1].reason})"
+        if later[-1].after == TrackState.ENDED.word:
+            told.append(_phrase(later[-1]))
     return ", ".join(told)
+
+
+def _phrase(event: Event) -> str:
+    if event.after == TrackState.ENDED.word:
+        return f"ended in frame {event.frame} ({event.reason})"
+    return f"{event.reason} in frame {event.frame}"
 
 
 def moments(ledger: RunLedger, track: int, life: Life, frames: Sequence[int]) -> list[Moment]:
@@ -66,52 +71,63 @@ def moments(ledger: RunLedger, track: int, life: Life, frames: Sequence[int]) ->
     if not frames:
         return []
     first, last = frames[0], frames[-1]
-    rows = ledger.rows(
-        "decisions",
-        first,
-        last,
-        columns=(
-            "frame", "time", "tier", "decision", "track", "detection", "line", "chosen", "margin",
-            "contested",
-        ),
-        track=track,
-    ).to_pylist()  # fmt: skip
-    live = ledger.rows(
-        "predictions", first, last, columns=("frame", "track", "state"), track=track
-    ).to_pylist()
-    states = {row["frame"]: row["state"] for row in live}
     decided: dict[int, dict] = {}
-    for row in rows:
-        if not row["chosen"]:
-            continue
-        before = decided.get(row["frame"])
-        if before is None or before["decision"] == "miss":  # a later tier's word counts
-            decided[row["frame"]] = row
+    for row in ledger.rows(
+        "decisions", first, last, columns=DECISION_COLUMNS, track=track
+    ).to_pylist():
+        known = decided.get(row["frame"])
+        if row["chosen"] and (known is None or known["decision"] == "miss"):
+            decided[row["frame"]] = row  # a later tier may pair what an earlier one missed
+    states = _by_frame(ledger, "predictions", ("frame", "state"), first, last, track)
+    shown = _by_frame(ledger, "tracks", ("frame", "time", "line", "confidence"), first, last, track)
+    limit = ledger.settings.ledger.contested_margin
     found = []
     for frame in frames:
         events = [event for event in life.events if event.frame == frame]
-        if frame not in states and not events:
-            continue
-        found.append(_moment(frame, states.get(frame), decided.get(frame), events))
+        if frame in states or events:
+            found.append(
+                _moment(
+                    frame,
+                    states.get(frame, {}).get("state"),
+                    decided.get(frame),
+                    shown.get(frame, {}),
+                    events,
+                    limit,
+                )
+            )
     return found
 
 
-def _moment(frame: int, state: str | None, row: dict | None, events: list[Event]) -> Moment:
+def _by_frame(
+    ledger: RunLedger, name: str, columns: tuple[str, ...], first: int, last: int, track: int
+) -> dict[int, dict]:
+    rows = ledger.rows(name, first, last, columns=columns, track=track).to_pylist()
+    return {row["frame"]: row for row in rows}
+
+
+def _moment(
+    frame: int, state: str | None, row: dict | None, shown: dict, events: list[Event], limit: float
+) -> Moment:
     reasons = tuple(event.reason for event in events)
     if row is None:
-        decision = "born" if "born" in reasons else ("ended" if state is None else "took no part")
-        time = events[0].time if events else None
-        return Moment(frame, time, state, decision, None, None, None, "", False, reasons)
-    margin = row["margin"]
+        if state is None:
+            decision = "born" if "born" in reasons else "ended"
+        else:
+            decision = "took no part"
+        times = [event.time for event in events] + [shown.get("time")]
+        row = {"decision": decision, "time": times[0], "line": shown.get("line")}
+    margin = row.get("margin")
+    known = margin is not None and math.isfinite(margin)
     return Moment(
         frame=frame,
         time=row["time"],
         state=state,
         decision=row["decision"],
-        detection=row["detection"],
+        detection=row.get("detection"),
         line=row["line"],
-        margin=None if margin is None or math.isinf(margin) else margin,
-        odds=odds(margin),
-        contested=margin is not None and bool(row["contested"]),
+        margin=margin if known else None,
+        odds="" if margin is None else odds(margin),
+        contested=known and margin < limit,
+        confidence=shown.get("confidence"),
         events=reasons,
     )

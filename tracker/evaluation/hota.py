@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 
@@ -14,6 +13,7 @@ from tracker.log.model import Floats, Ints
 
 # Least similarity of a pair: 0.05, 0.10, … 0.95.
 THRESHOLDS = np.arange(1, 20) / 20.0
+ACCURACIES = ("hota", "deta", "assa", "loca")
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -73,7 +73,7 @@ class HotaCounts:
 
     def by_threshold(self) -> dict[str, dict[str, float | None]]:
         """The four accuracies at each threshold, None where there is none."""
-        columns = {"hota": self.hota, "deta": self.deta, "assa": self.assa, "loca": self.loca}
+        columns = {name: getattr(self, name) for name in ACCURACIES}
         return {
             f"{threshold:.2f}": {
                 name: None if values is None or np.isnan(values[k]) else float(values[k])
@@ -82,13 +82,10 @@ class HotaCounts:
             for k, threshold in enumerate(THRESHOLDS)
         }
 
-    def means(self) -> dict[str, Any]:
-        """The four accuracies averaged over the thresholds (LocA over those with pairs)."""
-        columns = {"hota": self.hota, "deta": self.deta, "assa": self.assa, "loca": self.loca}
-        return {
-            name: None if values is None else float(np.nanmean(values))
-            for name, values in columns.items()
-        }
+    def mean(self, name: str) -> float | None:
+        """One accuracy averaged over the thresholds (LocA over those that have pairs)."""
+        values = getattr(self, name)
+        return None if values is None else float(np.nanmean(values))
 
 
 def count_hota(both: SideBySide, couples: Couples) -> HotaCounts:

@@ -85,15 +85,36 @@ class Scores:
         """Paired rows / annotated rows."""
         return _ratio(self.counts.matches, self.counts.truth_boxes)
 
+    @property
+    def hota(self) -> float | None:
+        """Higher order tracking accuracy, averaged over the thresholds."""
+        return self.hota_counts.mean("hota")
+
+    @property
+    def deta(self) -> float | None:
+        """Detection accuracy, averaged over the thresholds."""
+        return self.hota_counts.mean("deta")
+
+    @property
+    def assa(self) -> float | None:
+        """Association accuracy, averaged over the thresholds."""
+        return self.hota_counts.mean("assa")
+
+    @property
+    def loca(self) -> float | None:
+        """Localisation accuracy: similarity of pairs, averaged over the thresholds with any."""
+        return self.hota_counts.mean("loca")
+
     def as_dict(self) -> dict[str, Any]:
         """All scores and counts by name, as `margent evaluate --json` prints them."""
         ratios = {name: getattr(self, name) for name in RATIOS}
-        means = self.hota_counts.means()
         by_threshold = {"hota_by_threshold": self.hota_counts.by_threshold()}
-        return ratios | means | asdict(self.counts) | by_threshold
+        return ratios | asdict(self.counts) | by_threshold
 
 
-RATIOS = ("mota", "motp", "idf1", "idp", "idr", "precision", "recall")
+RATIOS = (
+    "hota", "deta", "assa", "loca", "mota", "motp", "idf1", "idp", "idr", "precision", "recall",
+)  # fmt: skip
 
 
 def _ratio(part: float, whole: float) -> float | None:

@@ -18,6 +18,9 @@ LEGEND = (
 COLUMNS = (
     ("MOTA", lambda s: _percent(s.mota)),
     ("IDF1", lambda s: _percent(s.idf1)),
+    ("HOTA", lambda s: _percent(s.hota)),
+    ("DetA", lambda s: _percent(s.deta)),
+    ("AssA", lambda s: _percent(s.assa)),
     ("IDP", lambda s: _percent(s.idp)),
     ("IDR", lambda s: _percent(s.idr)),
     ("prec.", lambda s: _percent(s.precision)),

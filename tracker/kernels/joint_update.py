@@ -14,6 +14,10 @@ Where all detections share one R, and so one S and K, this is the form in the te
     P̂ = β_0 P + (1 − β_0) (P − K S Kᵀ) + K (Σ β_j ν_j ν_jᵀ − ν νᵀ) Kᵀ
 
 The first form holds for any R, and is a sum of positive terms: P̂ stays positive definite.
+
+Known limits. Tracks that stay close share their detections, and their means are drawn together
+(coalescence). What an empty gate says about where the object is not is left out: under "none" the
+covariance is the prediction's. The mixture's shape is lost, two far peaks become one wide one.
 """
 
 from __future__ import annotations
