@@ -22,10 +22,10 @@ from tracker.engine import FrameResult
 from tracker.kernels.assignment import problem_frontier
 from tracker.kernels.margin import force_costs
 from tracker.log.model import Frame, Kind
+from tracker.results.parquet import ROW_GROUP, open_parquet
 from tracker.results.table import STATE_WORDS, label_words
 from tracker.settings import Settings
 
-CHUNK_ROWS = 65_536
 DECISION_WORDS = pa.array(["pair", "miss", "new"])
 PAIR, MISS, NEW = 0, 1, 2
 
@@ -179,7 +179,7 @@ class _ChunkedFile:
     def add(self, columns: Columns) -> None:
         self._parts.append(columns)
         self._rows += len(columns["frame"])
-        if self._rows >= CHUNK_ROWS:
+        if self._rows >= ROW_GROUP:
             self._flush()
 
     def close(self) -> None:
@@ -197,8 +197,8 @@ class _ChunkedFile:
             }
         )
         if self._writer is None:
-            self._writer = pq.ParquetWriter(self._path, table.schema, compression="zstd")
-        self._writer.write_table(table, row_group_size=CHUNK_ROWS)
+            self._writer = open_parquet(self._path, table.schema)
+        self._writer.write_table(table, row_group_size=ROW_GROUP)
         self._parts, self._rows = [], 0
 
     def _arrow(self, name: str, values: NDArray) -> pa.Array:

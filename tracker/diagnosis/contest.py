@@ -12,18 +12,19 @@ from dataclasses import dataclass
 
 import msgspec
 import numpy as np
+from numpy.typing import NDArray
 
 from tracker.association import AssociationRule, CandidatePairs
 from tracker.association.cost import candidate_costs
 from tracker.association.rule import association_rules
 from tracker.association.terms import TERMS, registered_costs
-from tracker.diagnosis.explanation import LEDGER, RECOMPUTED, Change
+from tracker.diagnosis.explanation import Change
 from tracker.diagnosis.frame_record import FrameRecord
 from tracker.kernels.assignment import Problem
 from tracker.kernels.gate import GATE_OK, gate_candidates
 from tracker.kernels.solve import solve
 from tracker.lifecycle.table import TrackTable
-from tracker.log.model import Floats, Frame, Ints, Kind
+from tracker.log.model import Codes, Floats, Frame, Ints, Kind
 from tracker.settings.schema import CostSettings, Settings
 
 # Terms that follow from what predictions.parquet and detections.parquet hold.
@@ -68,8 +69,9 @@ def read_rules(settings: Settings, kind: Kind) -> Rules:
 class Contest:
     """One component of one tier. Rows are `tracks`, columns `detections`, E candidates.
 
-    cost, distance, overlap, force_cost : (E,); costs are nan where unknown, force costs where the
-    ledger has none.   row : (E,) row of each candidate.   held : (n,) chosen column, -1 for none.
+    row, column : (E,) of each candidate.   recorded : (E,) whether the ledger has it; the others
+    were found again.   cost, terms, distance, overlap, force_cost : (E,); costs are nan where
+    unknown, force costs where the ledger has none.   held : (n,) chosen column, -1 for none.
     problem : None if costs are unknown.
     """
 
@@ -78,13 +80,13 @@ class Contest:
     detections: Ints
     row: Ints
     column: Ints
+    recorded: NDArray[np.bool_]
     cost: Floats
     terms: dict[str, Floats]
     distance: Floats
     overlap: Floats
     force_cost: Floats
     held: Ints
-    source: str
     problem: Problem | None
 
     def candidates_of(self, *, track: int | None = None, detection: int | None = None) -> Ints:
@@ -126,7 +128,7 @@ class Contest:
     def _number(self, column: int) -> int | None:
         return int(self.detections[column]) if column >= 0 else None
 
-    def _best(self, allowed: np.ndarray) -> Ints:
+    def _best(self, allowed: NDArray[np.bool_]) -> Ints:
         assert self.problem is not None
         counts = np.bincount(self.row[allowed], minlength=len(self.tracks))
         part = self.problem._replace(
@@ -185,13 +187,13 @@ def read_contest(
         detections=detections,
         row=row,
         column=column,
+        recorded=np.ones(len(pairs), np.bool_),
         cost=cost,
         terms={name: values[pairs] for name, values in rows.terms.items()},
         distance=rows.distance[pairs],
         overlap=rows.overlap[pairs],
         force_cost=np.where(rows.chosen[pairs], 0.0, rows.force_cost[pairs]),
         held=held,
-        source=LEDGER,
         problem=_problem(rule, row, column, cost, len(tracks), len(detections)),
     )
 
@@ -205,13 +207,15 @@ def _found_again(
     held: Ints,
     chosen: Ints,
 ) -> Contest:
-    """The component with candidates from predictions and detections, costs too if they can be."""
-    rule = rules.tiers[tier]
+    """The component with its candidates gated again, and costed again where that can be done.
+
+    chosen : rows of the chosen pairs. If their costs do not come out as recorded, the costs of the
+    others are not believed.
+    """
+    rule, rows = rules.tiers[tier], record.decisions
     at = np.searchsorted(record.track, tracks)
-    estimate = np.ascontiguousarray(record.estimate[at])
-    covariance = np.ascontiguousarray(record.covariance[at])
-    z = np.ascontiguousarray(record.z[detections])
-    variance = np.ascontiguousarray(record.variance[detections])
+    estimate, covariance = record.estimate[at], record.covariance[at]
+    z, variance = record.z[detections], record.variance[detections]
     status, _, candidates = gate_candidates(
         estimate,
         covariance,
@@ -225,48 +229,54 @@ def _found_again(
     )
     assert status == GATE_OK, "the run gated these before"
     row = np.repeat(np.arange(len(tracks)), np.diff(candidates.start))
+    column = candidates.column.copy()
+    mine = [
+        int(np.flatnonzero((row == i) & (column == held[i]))[0])
+        for i in np.searchsorted(tracks, rows.track[chosen])
+    ]
     cost = np.full(len(row), np.nan)
-    terms: dict[str, Floats] = {}
+    terms = {name: np.full(len(row), np.nan) for name in rows.terms}
     if rules.repeatable[tier]:
         table = TrackTable(z.shape[1])
-        empty = np.full(len(tracks), np.nan)
-        table.append(estimate, covariance, empty, np.full(len(tracks), -1, np.int32), 0.0)
+        table.append(estimate, covariance, np.full(len(tracks), np.nan), _codes(tracks), 0.0)
         frame = Frame(
             number=record.number,
-            time=record.time or 0.0,
+            time=0.0,
             z=z,
             score=record.score[detections],
-            label=np.full(len(z), -1, np.int32),
+            label=_codes(detections),
             line=record.line[detections],
         )
-        values, cost = candidate_costs(rule, CandidatePairs(candidates, table, frame, None, None))
-        terms = dict(zip(rule.terms, values, strict=True))
-    kept = record.decisions.cost[chosen]
-    chosen_rows = np.searchsorted(tracks, record.decisions.track[chosen])
-    again = np.full(len(chosen), np.nan)
-    for k, i in enumerate(chosen_rows):
-        e = np.flatnonzero((row == i) & (candidates.column == held[i]))
-        again[k] = cost[e[0]] if len(e) else np.nan
-    same = np.allclose(again, kept, rtol=SAME_COST, atol=SAME_COST)
-    if not same:
-        cost, terms = np.full(len(row), np.nan), {}
+        values, again = candidate_costs(rule, CandidatePairs(candidates, table, frame, None, None))
+        if np.allclose(again[mine], rows.cost[chosen], rtol=SAME_COST, atol=SAME_COST):
+            cost = again
+            terms |= dict(zip(rule.terms, values, strict=True))
+    known = not np.isnan(cost).any()
+    recorded = np.zeros(len(row), np.bool_)
+    recorded[mine] = True
+    cost[mine] = rows.cost[chosen]
+    for name in terms:
+        terms[name][mine] = rows.terms[name][chosen]
     return Contest(
         rule=rule,
         tracks=tracks,
         detections=detections,
         row=row,
-        column=candidates.column.copy(),
+        column=column,
+        recorded=recorded,
         cost=cost,
         terms=terms,
         distance=candidates.distance.copy(),
         overlap=candidates.overlap.copy(),
         force_cost=np.full(len(row), np.nan),
         held=held,
-        source=RECOMPUTED,
-        problem=_problem(rule, row, candidates.column, cost, len(tracks), len(detections))
-        if same and not np.isnan(cost).any()
-        else None,
+        problem=_problem(rule, row, column, cost, len(tracks), len(detections)) if known else None,
     )
+
+
+def _codes(like: Ints) -> Codes:
+    """As many unknown labels."""
+    return np.full(len(like), -1, np.int32)
 
 
 def _problem(

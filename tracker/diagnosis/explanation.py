@@ -178,7 +178,7 @@ class DetectionView:
 
 @dataclass(frozen=True, slots=True)
 class Moment:
-    """A track in one frame before or after.
+    """A track in one frame.
 
     decision : 'pair', 'miss', 'born', 'ended' (before anything was decided) or 'took no part' (in
     any tier).   margin : None if nothing could replace the decision.
@@ -204,7 +204,8 @@ class Explanation:
     track, detection : what was asked about, both None for all contested decisions.
     decisions : one a tier that the subject took part in; or the contested ones, closest first.
     decided, contested, left_out : in the whole frame; contested decisions not among `decisions`.
-    tracks, detections : all that are named.   before, after : the asked track's frames around.
+    tracks, detections : all that are named.   history : the asked track (or the one that got the
+    asked detection) in this frame and those around.
     """
 
     run: str
@@ -223,8 +224,7 @@ class Explanation:
     why_not: tuple[WhyNot, ...]
     tracks: tuple[TrackView, ...]
     detections: tuple[DetectionView, ...]
-    before: tuple[Moment, ...]
-    after: tuple[Moment, ...]
+    history: tuple[Moment, ...]
     notes: tuple[str, ...]
     caution: str = field(
         default=(
@@ -243,6 +243,11 @@ class Explanation:
         from tracker.diagnosis.story import tell
 
         return tell(self)
+
+    def line_of(self, detection: int | None) -> int | None:
+        """Source line of a detection that is named here."""
+        view = self.detection_view(detection)
+        return None if view is None else view.line
 
     def track_view(self, track: int | None) -> TrackView | None:
         """The view of a track, None if it is not named here."""

@@ -67,7 +67,7 @@ def _phrase(event: Event) -> str:
 
 
 def moments(ledger: RunLedger, track: int, life: Life, frames: Sequence[int]) -> list[Moment]:
-    """What was decided about a track in some frames; those in which it did not live are left out."""
+    """What was decided about a track in some frames, those left out in which it did not live."""
     if not frames:
         return []
     first, last = frames[0], frames[-1]
@@ -110,14 +110,12 @@ def _moment(
 ) -> Moment:
     reasons = tuple(event.reason for event in events)
     if row is None:
+        decision = "took no part"
         if state is None:
             decision = "born" if "born" in reasons else "ended"
-        else:
-            decision = "took no part"
         times = [event.time for event in events] + [shown.get("time")]
         row = {"decision": decision, "time": times[0], "line": shown.get("line")}
-    margin = row.get("margin")
-    known = margin is not None and math.isfinite(margin)
+    margin: float | None = row.get("margin")
     return Moment(
         frame=frame,
         time=row["time"],
@@ -125,9 +123,9 @@ def _moment(
         decision=row["decision"],
         detection=row.get("detection"),
         line=row["line"],
-        margin=margin if known else None,
+        margin=None if margin is None or math.isinf(margin) else margin,
         odds="" if margin is None else odds(margin),
-        contested=known and margin < limit,
+        contested=margin is not None and margin < limit,
         confidence=shown.get("confidence"),
         events=reasons,
     )

@@ -9,6 +9,8 @@ import numpy as np
 from tracker.evaluation.frames import SideBySide
 from tracker.log.model import Ints
 
+LARGEST_TABLE = 4_000_000  # objects times tracks
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Couples:
@@ -30,7 +32,7 @@ def find_couples(both: SideBySide) -> Couples:
     """Number the couples that have a pair."""
     scene = both.scene
     thing = np.repeat(scene.truth, np.diff(scene.pair_start))
-    key, of_pair = np.unique(thing * both.tracks + scene.track[scene.pair_row], return_inverse=True)
+    key, of_pair = _numbered(thing * both.tracks + scene.track[scene.pair_row], both)
     thing, track = np.divmod(key, both.tracks) if len(key) else (key, key)
     return Couples(
         of_pair.astype(np.int64),
@@ -39,3 +41,13 @@ def find_couples(both: SideBySide) -> Couples:
         np.bincount(scene.truth, minlength=both.objects)[thing],
         np.bincount(scene.track, minlength=both.tracks)[track],
     )
+
+
+def _numbered(keys: Ints, both: SideBySide) -> tuple[Ints, Ints]:
+    """The different keys in order, and the number of each; sorting only where no table fits."""
+    size = both.objects * both.tracks
+    if size > LARGEST_TABLE:
+        return np.unique(keys, return_inverse=True)
+    there = np.zeros(size, np.bool_)
+    there[keys] = True
+    return np.flatnonzero(there), (np.cumsum(there) - 1)[keys]

@@ -80,9 +80,9 @@ def side_by_side(
     Raises InputError where an identity is twice in a frame.
     """
     truth_frame = aligned_frames(tracks, truth)
-    truth_row = np.lexsort((truth.object, truth_frame))
+    truth_row = _ordered(truth_frame, truth.object)
     track_row = np.flatnonzero(counted)
-    track_row = track_row[np.lexsort((tracks.track[track_row], tracks.frame[track_row]))]
+    track_row = track_row[_ordered(tracks.frame[track_row], tracks.track[track_row])]
     truth_frame, track_frame = truth_frame[truth_row], tracks.frame[track_row]
     objects, things = np.unique(truth.object[truth_row], return_inverse=True)
     identities, ids = np.unique(tracks.track[track_row], return_inverse=True)
@@ -101,7 +101,7 @@ def side_by_side(
             path=truth.path,
             remedy="Every object may have one row a frame.",
         )
-    numbers = np.union1d(truth_frame, track_frame)
+    numbers = np.union1d(_different(truth_frame), _different(track_frame))
     starts = [
         np.append(np.searchsorted(frame, numbers), len(frame))
         for frame in (truth_frame, track_frame)
@@ -124,6 +124,19 @@ def side_by_side(
         similarity,
     )
     return SideBySide(numbers, truth_row, track_row, len(objects), len(identities), scene)
+
+
+def _ordered(frame: Ints, identity: Ints) -> Ints:
+    """Rows by (frame, identity); files are mostly in that order already."""
+    later, same = frame[1:] > frame[:-1], frame[1:] == frame[:-1]
+    if np.all(later | (same & (identity[1:] >= identity[:-1]))):
+        return np.arange(len(frame))
+    return np.lexsort((identity, frame))
+
+
+def _different(frame: Ints) -> Ints:
+    """The frames that are there, of sorted ones."""
+    return frame[np.append(True, frame[1:] > frame[:-1])] if len(frame) else frame
 
 
 def _starts(start: Ints, keep: NDArray[np.bool_]) -> Ints:

@@ -10,6 +10,8 @@ from tracker.kernels.grid import meeting_pairs
 from tracker.kernels.overlap import box_overlap
 
 EVERY = 2**62  # as a limit: all pairs
+# Up to this many pairs a frame, a sorted sweep is faster than building a grid.
+SWEEP_PRODUCT = 250_000
 
 
 @njit(cache=True)
@@ -26,32 +28,24 @@ def pair_boxes(
 
     Returns (T + 1,) first pair of each annotated row, (E,) track rows, (E,) their IoU.
     """
-    start = np.zeros(len(truth_z) + 1, np.int64)
-    column = np.empty(2 * len(truth_z) + 16, np.int64)
+    truth_low, truth_high = _corners(truth_z)
+    track_low, track_high = _corners(track_z)
+    start, column = _meeting_rows(
+        truth_start, truth_low, truth_high, track_start, track_low, track_high
+    )
     overlap = np.empty(len(column))
     count = 0
-    truth_low, truth_high = truth_z[:, :2].copy(), truth_z[:, :2].copy()
-    track_low, track_high = track_z[:, :2].copy(), track_z[:, :2].copy()
-    truth_low -= 0.5 * truth_z[:, 2:4]
-    truth_high += 0.5 * truth_z[:, 2:4]
-    track_low -= 0.5 * track_z[:, 2:4]
-    track_high += 0.5 * track_z[:, 2:4]
-    for f in range(len(truth_start) - 1):
-        a, b = truth_start[f], truth_start[f + 1]
-        c, d = track_start[f], track_start[f + 1]
-        first, other = meeting_pairs(
-            truth_low[a:b], truth_high[a:b], track_low[c:d], track_high[c:d], EVERY
-        )
-        column = _room(column, count, len(other))
-        overlap = _room(overlap, count, len(other))
-        for i in range(b - a):
-            for e in range(first[i], first[i + 1]):
-                value = box_overlap(truth_z, a + i, track_z, c + other[e])
-                if value >= least:
-                    column[count] = c + other[e]
-                    overlap[count] = value
-                    count += 1
-            start[a + i + 1] = count
+    first = 0
+    for t in range(len(truth_z)):
+        last = start[t + 1]
+        for e in range(first, last):
+            value = box_overlap(truth_z, t, track_z, column[e])
+            if value >= least:
+                column[count] = column[e]
+                overlap[count] = value
+                count += 1
+        first = last
+        start[t + 1] = count
     return start, column[:count].copy(), overlap[:count].copy()
 
 
@@ -64,32 +58,96 @@ def pair_points(
     most: float,
 ) -> tuple[NDArray[np.int64], NDArray[np.int64], NDArray[np.float64]]:
     """Pairs of points (x, y) that are at most `most` apart; as `pair_boxes`, with distances."""
-    start = np.zeros(len(truth_z) + 1, np.int64)
-    column = np.empty(2 * len(truth_z) + 16, np.int64)
-    distance = np.empty(len(column))
-    count = 0
     # A little more than needed, so that rounding of the borders loses no pair.
     reach = most * (1.0 + 1e-12)
-    low, high = truth_z[:, :2] - reach, truth_z[:, :2] + reach
     place = track_z[:, :2].copy()
+    start, column = _meeting_rows(
+        truth_start, truth_z[:, :2] - reach, truth_z[:, :2] + reach, track_start, place, place
+    )
+    distance = np.empty(len(column))
+    count = 0
+    first = 0
+    for t in range(len(truth_z)):
+        last = start[t + 1]
+        for e in range(first, last):
+            dx = truth_z[t, 0] - track_z[column[e], 0]
+            dy = truth_z[t, 1] - track_z[column[e], 1]
+            value = np.sqrt(dx * dx + dy * dy)
+            if value <= most:
+                column[count] = column[e]
+                distance[count] = value
+                count += 1
+        first = last
+        start[t + 1] = count
+    return start, column[:count].copy(), distance[:count].copy()
+
+
+@njit(cache=True)
+def _corners(z: NDArray[np.float64]) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    low, high = np.empty((len(z), 2)), np.empty((len(z), 2))
+    for i in range(len(z)):
+        for axis in range(2):
+            low[i, axis] = z[i, axis] - 0.5 * z[i, axis + 2]
+            high[i, axis] = z[i, axis] + 0.5 * z[i, axis + 2]
+    return low, high
+
+
+@njit(cache=True)
+def _meeting_rows(
+    truth_start: NDArray[np.int64],
+    truth_low: NDArray[np.float64],
+    truth_high: NDArray[np.float64],
+    track_start: NDArray[np.int64],
+    track_low: NDArray[np.float64],
+    track_high: NDArray[np.float64],
+) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """(T + 1,) starts and (E,) track rows of the rectangles of each frame that meet."""
+    start = np.zeros(len(truth_low) + 1, np.int64)
+    column = np.empty(3 * len(truth_low) + 16, np.int64)
+    count = 0
     for f in range(len(truth_start) - 1):
         a, b = truth_start[f], truth_start[f + 1]
         c, d = track_start[f], track_start[f + 1]
-        first, other = meeting_pairs(low[a:b], high[a:b], place[c:d], place[c:d], EVERY)
-        column = _room(column, count, len(other))
-        distance = _room(distance, count, len(other))
-        for i in range(b - a):
-            for e in range(first[i], first[i + 1]):
-                j = c + other[e]
-                dx = truth_z[a + i, 0] - track_z[j, 0]
-                dy = truth_z[a + i, 1] - track_z[j, 1]
-                value = np.sqrt(dx * dx + dy * dy)
-                if value <= most:
-                    column[count] = j
-                    distance[count] = value
+        if (b - a) * (d - c) > SWEEP_PRODUCT:
+            first, other = meeting_pairs(
+                truth_low[a:b], truth_high[a:b], track_low[c:d], track_high[c:d], EVERY
+            )
+            column = _room(column, count, len(other))
+            for e in range(len(other)):
+                column[count + e] = c + other[e]
+            for i in range(b - a):
+                start[a + i + 1] = count + first[i + 1]
+            count += len(other)
+            continue
+        # Sorted by left edge, what meets a rectangle lies between its right edge and its left
+        # edge minus the widest.
+        order = c + np.argsort(track_low[c:d, 0])
+        left = track_low[order, 0]
+        widest = 0.0
+        for j in range(c, d):
+            widest = max(widest, track_high[j, 0] - track_low[j, 0])
+        for t in range(a, b):
+            column = _room(column, count, d - c)
+            begin = count
+            # A little more than the widest, so that rounding loses none.
+            k = np.searchsorted(left, truth_low[t, 0] - 1.0000001 * widest)
+            while k < d - c and left[k] <= truth_high[t, 0]:
+                j = order[k]
+                if (
+                    track_high[j, 0] >= truth_low[t, 0]
+                    and track_low[j, 1] <= truth_high[t, 1]
+                    and track_high[j, 1] >= truth_low[t, 1]
+                ):
+                    # In order of rows.
+                    hole = count
+                    while hole > begin and column[hole - 1] > j:
+                        column[hole] = column[hole - 1]
+                        hole -= 1
+                    column[hole] = j
                     count += 1
-            start[a + i + 1] = count
-    return start, column[:count].copy(), distance[:count].copy()
+                k += 1
+            start[t + 1] = count
+    return start, column[:count].copy()
 
 
 @njit(cache=True)

@@ -8,21 +8,22 @@ from pathlib import Path
 from types import TracebackType
 from typing import Any, Self
 
+import numpy as np
 import pyarrow as pa
 import pyarrow.csv
 import pyarrow.parquet as pq
 
-from tracker.engine import FrameResult
+from tracker.engine import FrameResult, Transitions
 from tracker.ledger import Ledger
 from tracker.lifecycle.rules import Reason
-from tracker.log.model import DetectionLog, Frame, Rejection
+from tracker.log.model import DetectionLog, Floats, Frame, Ints, Rejection
+from tracker.results.parquet import ROW_GROUP, open_parquet
 from tracker.results.recorder import Recorder, TrackRows
-from tracker.results.table import csv_table, parquet_table
-from tracker.results.tracks import TrackState
+from tracker.results.table import STATE_WORDS, csv_table, parquet_table
 from tracker.settings import Settings, settings_as_toml
 
-CHUNK_ROWS = 65_536
 EVENT_COLUMNS = ("frame", "time", "track", "from", "to", "reason")
+REASON_WORDS = pa.array([reason.words for reason in Reason])
 REJECTION_COLUMNS = ("line", "column", "reason", "text")
 
 
@@ -44,9 +45,10 @@ class RunWriter:
         self._parquet: pq.ParquetWriter | None = None
         self.counts = {"tracks_confirmed": 0, "track_rows": 0, "reported_rows": 0, "events": 0}
         self._tracks = (folder / "tracks.csv").open("wb")
-        self._events = (folder / "events.csv").open("w", encoding="utf-8", newline="")
-        self._event_rows = csv.writer(self._events, lineterminator="\n")
-        self._event_rows.writerow(EVENT_COLUMNS)
+        self._events = (folder / "events.csv").open("wb")
+        self._events.write((",".join(EVENT_COLUMNS) + "\n").encode())
+        self._events_waiting: list[tuple[Ints, Floats, Transitions]] = []
+        self._events_written = 0
 
     def __enter__(self) -> Self:
         return self
@@ -65,7 +67,7 @@ class RunWriter:
 
     def add(self, frame: Frame, result: FrameResult) -> None:
         """Take one frame's result in."""
-        self._write_events(result)
+        self._note_events(result)
         self._ledger.add(frame, result)
         for rows in self._recorder.add(frame, result):
             self._wait(rows)
@@ -75,6 +77,7 @@ class RunWriter:
         for rows in self._recorder.finish():
             self._wait(rows)
         self._flush()
+        self._flush_events()
         self.counts["contested_decisions"] = self._ledger.contested
         self.counts["tracks_confirmed"] = self._recorder.confirmed
         write_rejections(self._folder / "rejected.csv", self._log.rejections)
@@ -83,31 +86,29 @@ class RunWriter:
         )
         write_json(self._folder / "run.json", facts | {"counts": facts["counts"] | self.counts})
 
-    def _write_events(self, result: FrameResult) -> None:
+    def _note_events(self, result: FrameResult) -> None:
         events = result.transitions
-        for track, before, after, reason in zip(
-            events.track.tolist(),
-            events.before.tolist(),
-            events.after.tolist(),
-            events.reason.tolist(),
-            strict=True,
-        ):
-            self._event_rows.writerow(
-                (
-                    result.number,
-                    f"{result.time:.6f}",
-                    track,
-                    TrackState(before).word if before >= 0 else "",
-                    TrackState(after).word,
-                    Reason(reason).words,
-                )
-            )
-        self.counts["events"] += len(events.track)
+        count = len(events.track)
+        if not count:
+            return
+        self._events_waiting.append(
+            (np.full(count, result.number), np.full(count, result.time), events)
+        )
+        self.counts["events"] += count
+        if self.counts["events"] - self._events_written >= ROW_GROUP:
+            self._flush_events()
+
+    def _flush_events(self) -> None:
+        if self._events_waiting:
+            table = events_table(self._events_waiting)
+            write_csv_chunk(self._events, table, header=False)
+        self._events_waiting = []
+        self._events_written = self.counts["events"]
 
     def _wait(self, rows: TrackRows) -> None:
         self._waiting.append(rows)
         self._waiting_rows += len(rows)
-        if self._waiting_rows >= CHUNK_ROWS:
+        if self._waiting_rows >= ROW_GROUP:
             self._flush()
 
     def _flush(self) -> None:
@@ -119,13 +120,25 @@ class RunWriter:
         first = self._parquet is None
         table = parquet_table(rows, kind, labels)
         if self._parquet is None:
-            self._parquet = pq.ParquetWriter(
-                self._folder / "tracks.parquet", table.schema, compression="zstd"
-            )
-        self._parquet.write_table(table)
+            self._parquet = open_parquet(self._folder / "tracks.parquet", table.schema)
+        self._parquet.write_table(table, row_group_size=ROW_GROUP)
         write_csv_chunk(self._tracks, csv_table(rows, kind, labels), header=first)
         self.counts["track_rows"] += len(rows)
         self.counts["reported_rows"] += int(rows.reported.sum())
+
+
+def events_table(parts: list[tuple[Ints, Floats, Transitions]]) -> pa.Table:
+    """Events as words: state before (none at a birth), state after, reason."""
+    before = np.concatenate([events.before for _, _, events in parts])
+    columns = (
+        pa.array(np.concatenate([frame for frame, _, _ in parts])),
+        pa.array(np.round(np.concatenate([time for _, time, _ in parts]), 6)),
+        pa.array(np.concatenate([events.track for _, _, events in parts])),
+        STATE_WORDS.take(pa.array(before, mask=before < 0)),
+        STATE_WORDS.take(pa.array(np.concatenate([events.after for _, _, events in parts]))),
+        REASON_WORDS.take(pa.array(np.concatenate([events.reason for _, _, events in parts]))),
+    )
+    return pa.table(dict(zip(EVENT_COLUMNS, columns, strict=True)))
 
 
 def write_csv_chunk(sink: Any, table: pa.Table, *, header: bool) -> None:

@@ -35,19 +35,32 @@ def load_settings(path: str | Path | None = None, overrides: tuple[str, ...] = (
 def settings_from(values: dict[str, Any], source: str = "") -> Settings:
     """Validate plain nested dictionaries; the string 'none' stands for an unset value."""
     try:
-        return msgspec.convert(_unset(values), Settings)
+        return msgspec.convert(_unset(values, Settings), Settings)
     except msgspec.ValidationError as error:
         problem, _, path = str(error).partition(" - at `$.")
         path = path.rstrip("`")
         raise SettingsError(_remedy(problem, path), setting=path, source=source) from None
 
 
-def _unset(value: Any) -> Any:
+def _unset(value: Any, hint: Any) -> Any:
+    """Replace 'none' by an unset value, except where 'none' is a choice of its own."""
     if isinstance(value, dict):
-        return {key: _unset(item) for key, item in value.items()}
+        hints = _hints_of(hint)
+        return {key: _unset(item, hints.get(key)) for key, item in value.items()}
     if isinstance(value, (list, tuple)):
-        return [_unset(item) for item in value]
-    return None if value == "none" else value
+        return [_unset(item, hint) for item in value]
+    return None if value == "none" and "none" not in _choices(hint) else value
+
+
+def _hints_of(hint: Any) -> dict[str, Any]:
+    """Types of a section's settings, by name; `hint` may wrap the section in a tuple or union."""
+    if isinstance(hint, type) and issubclass(hint, Struct):
+        return get_type_hints(hint, include_extras=True)
+    for item in get_args(hint):
+        found = _hints_of(item)
+        if found:
+            return found
+    return {}
 
 
 def settings_as_dict(settings: Settings) -> dict[str, Any]:
