@@ -9,7 +9,7 @@ from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from tracker.association import CandidatePairs, register_cost
+    from tracker.association import CandidatePairs, k_best, marginals, register_cost
     from tracker.engine import Engine, FrameResult
     from tracker.errors import MargentError
     from tracker.evaluation import evaluate
@@ -34,7 +34,9 @@ _HOME = {
     "Truth": "tracker.log",
     "associate_log": "tracker.offline",
     "evaluate": "tracker.evaluation",
+    "k_best": "tracker.association",
     "load_settings": "tracker.settings",
+    "marginals": "tracker.association",
     "read_log": "tracker.log",
     "read_run": "tracker.results",
     "read_truth": "tracker.log",
@@ -56,7 +58,9 @@ __all__ = [
     "Truth",
     "associate_log",
     "evaluate",
+    "k_best",
     "load_settings",
+    "marginals",
     "read_log",
     "read_run",
     "read_truth",

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import runpy
 from collections import Counter
 from collections.abc import Iterator
 from concurrent.futures import ProcessPoolExecutor
@@ -11,9 +12,10 @@ from multiprocessing import get_context
 from pathlib import Path
 from typing import Any
 
-from tracker.errors import InternalError, MargentError, UsageError
+from tracker.errors import InputError, InternalError, MargentError, UsageError
 from tracker.log import read_log
 from tracker.log.facts import name_of, read_facts
+from tracker.log.source import locate
 from tracker.offline import Watch, associate_log
 from tracker.settings import Settings
 
@@ -37,16 +39,19 @@ def associate_logs(
     settings: Settings,
     reading: dict[str, Any],
     workers: int = 1,
+    extensions: tuple[Path, ...] = (),
     watch: Watch | None = None,
 ) -> Iterator[Outcome]:
     """Associate each log into a run folder; yields the outcomes in the order of `logs`.
 
     out : the run folder of a single log, the parent of one folder a log for several; by default
     a folder named after the log in ``runs/``.   reading : keyword arguments of `read_log`.
+    extensions : Python files that are run first, in every process.
     watch : wraps the frames of each log to show progress, in a single process only.
 
-    Raises UsageError where two logs would get the same folder.
+    Raises UsageError where two logs would get the same folder or an extension fails.
     """
+    run_extensions(extensions)
     folders = run_folders(logs, out)
     jobs = [
         (Outcome(log, folder, folder.name if len(logs) > 1 else None), settings, reading)
@@ -56,7 +61,12 @@ def associate_logs(
         yield from (_associate_one(*job, watch) for job in jobs)
         return
     # Spawned, not forked: a fork would copy locks of threads that the parent may have started.
-    with ProcessPoolExecutor(min(workers, len(jobs)), mp_context=get_context("spawn")) as pool:
+    with ProcessPoolExecutor(
+        min(workers, len(jobs)),
+        mp_context=get_context("spawn"),
+        initializer=run_extensions,
+        initargs=(extensions,),
+    ) as pool:
         pending = [pool.submit(_associate_one, *job) for job in jobs]
         for future, job in zip(pending, jobs, strict=True):
             try:
@@ -66,6 +76,17 @@ def associate_logs(
                     f"{job[0].log}: the worker process died (out of memory?); run this log alone"
                 )
                 yield job[0]
+
+
+def run_extensions(files: tuple[Path, ...]) -> None:
+    """Run Python files for what they register. Raises UsageError if one cannot be run."""
+    for file in files:
+        try:
+            runpy.run_path(str(file))
+        except Exception as error:
+            raise UsageError(
+                f"the extension {file} failed: {type(error).__name__}: {error}"
+            ) from None
 
 
 def run_folders(logs: list[Path], out: Path | None) -> list[Path]:
@@ -78,7 +99,7 @@ def run_folders(logs: list[Path], out: Path | None) -> list[Path]:
 
 def _distinct_names(logs: list[Path]) -> list[str]:
     """Sequence names, with the file's stem behind those that several logs share."""
-    names = [name_of(log, read_facts(log)) for log in logs]
+    names = [_name_of(log) for log in logs]
     shared = {name for name, count in Counter(names).items() if count > 1}
     names = [
         f"{name}-{log.stem}" if name in shared else name
@@ -93,6 +114,14 @@ def _distinct_names(logs: list[Path]) -> list[str]:
                 "give them a name each in sequence.toml"
             )
     return names
+
+
+def _name_of(log: Path) -> str:
+    try:
+        log = locate(log, "detections")
+    except InputError:
+        return log.stem  # what is wrong with it comes up when it is read
+    return name_of(log, read_facts(log))
 
 
 def _associate_one(

@@ -56,6 +56,13 @@ def associate(
     strict: Annotated[
         bool, typer.Option(help="Stop with exit code 2 if any row would be rejected.")
     ] = False,
+    extension: Annotated[
+        list[Path] | None,
+        typer.Option(
+            help="Python file that is run first, to register cost functions. Repeatable; only "
+            "files that you trust."
+        ),
+    ] = None,
     workers: Annotated[int, typer.Option(min=1, help="Processes; each takes whole logs.")] = 1,
     print_settings: Annotated[
         bool, typer.Option(help="Print all settings with their meaning, and stop.")
@@ -86,16 +93,24 @@ def associate(
         "drop_identities": drop_identities,
         "strict": strict,
     }
-    _associate_all(logs, out, chosen, reading, workers)
+    _associate_all(logs, out, chosen, reading, workers, tuple(extension or ()))
 
 
 def _associate_all(
-    paths: list[Path], out: Path | None, settings: Settings, reading: dict, workers: int
+    paths: list[Path],
+    out: Path | None,
+    settings: Settings,
+    reading: dict,
+    workers: int,
+    extensions: tuple[Path, ...],
 ) -> None:
     """All logs, in one process or several; one log's error does not stop the others."""
     from tracker.batch import associate_logs
     from tracker.cli.progress import watched
+    from tracker.kernels import compiled_before
 
+    if not compiled_before():
+        print("compiling for this machine, once; this takes some seconds ...", file=sys.stderr)
     several = len(paths) > 1
     failures: list[MargentError] = []
     outcomes = associate_logs(
@@ -104,6 +119,7 @@ def _associate_all(
         settings,
         reading,
         workers,
+        extensions,
         watch=lambda frames, total: watched(frames, total=total, label="frames"),
     )
     for outcome in outcomes:

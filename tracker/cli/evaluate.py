@@ -4,15 +4,11 @@ from __future__ import annotations
 
 import json
 from pathlib import Path
-from typing import TYPE_CHECKING, Annotated
+from typing import Annotated
 
 import typer
 
-from tracker.errors import InputError, UsageError
-
-if TYPE_CHECKING:
-    from tracker.log.model import Truth
-    from tracker.results.tracks import Tracks
+from tracker.errors import LimitError, UsageError
 
 
 def evaluate(
@@ -53,10 +49,27 @@ def evaluate(
         str,
         typer.Option(
             help="'on': motmetrics counts too and must agree. 'off': for sizes beyond its memory "
-            "(about 1 GB for every million of pairs that could match, and 24 bytes for every "
-            "square of objects + tracks)."
+            "(about 0.6 GB for a million pairs that may match, and 3.4 GB for 10,000 objects and "
+            "tracks together, growing with their square)."
         ),
     ] = "on",
+    limit: Annotated[
+        list[str] | None,
+        typer.Option(
+            help="Hold an overall score to a limit, such as 'idf1>=0.72' or 'switches<=10'; "
+            "exit code 1 if it is not met. Names as --json has them. Repeatable."
+        ),
+    ] = None,
+    limits: Annotated[
+        Path | None,
+        typer.Option(
+            help="TOML file of limits: tables [overall], [every] (each sequence) and "
+            '[sequences.NAME] with lines such as idf1 = ">=0.72".'
+        ),
+    ] = None,
+    junit: Annotated[
+        Path | None, typer.Option(help="Write the limits' outcome as JUnit XML to this file.")
+    ] = None,
     json_: Annotated[bool, typer.Option("--json", help="Print JSON instead of a table.")] = False,
 ) -> None:
     """Score tracks against truth: HOTA, MOTA, MOTP (a distance), IDF1, switches and the rest.
@@ -67,7 +80,10 @@ def evaluate(
 
     Example: margent evaluate runs/forecourt --truth sample_sequences/forecourt/truth.csv
     """
+    from tracker.cli.sequences import tracks_by_name, truths_by_name
     from tracker.evaluation import Scope, evaluate_all
+    from tracker.evaluation.junit import write_junit
+    from tracker.evaluation.limits import judge, parse_limit, read_limits, verdict_table
     from tracker.evaluation.table import CAUTION, LEGEND, scores_table
 
     counted = {"as-reported": None, "yes": True, "no": False}
@@ -82,89 +98,35 @@ def evaluate(
         tuple(ignore_class or ()),
         counted[coasting],
     )
-    sequences = _read_tracks(tracks)
+    asked = [parse_limit(text) for text in limit or ()]
+    if junit is not None and not asked and limits is None:
+        raise UsageError("--junit reports limits: give --limit or --limits")
+    sequences = tracks_by_name(tracks)
+    if limits is not None:
+        asked += read_limits(limits, list(sequences))
+    truths = truths_by_name(truth, list(sequences))
     found = evaluate_all(
-        {
-            name: (sequences[name], path)
-            for name, path in _read_truths(truth, list(sequences)).items()
-        },
+        {name: (sequences[name], truths[name]) for name in truths},
         scope,
         with_referee=referee == "on",
     )
+    verdicts = judge(found, asked)
     if json_:
-        typer.echo(json.dumps(found.as_dict(), indent=2))
-        return
-    typer.echo(scores_table(found))
-    typer.echo(LEGEND, err=True)
-    typer.echo(CAUTION, err=True)
-
-
-def _read_tracks(paths: list[Path]) -> dict[str, Tracks]:
-    """Tracks by sequence name, in the order given."""
-    from tracker.log import read_track_file
-    from tracker.results import is_run, read_run
-
-    read: list[tuple[Path, Tracks]] = []
-    for path in paths:
-        runs = [path]
-        if path.is_dir() and not is_run(path):
-            runs = sorted(inner for inner in path.iterdir() if is_run(inner))
-            if not runs:
-                raise InputError(
-                    "is neither a run folder nor a folder of them",
-                    path=path,
-                    remedy="Make one with 'margent associate LOG --out DIR'.",
-                )
-        read += [(run, read_run(run) if is_run(run) else read_track_file(run)) for run in runs]
-    names = _names([(path, tracks.name) for path, tracks in read])
-    return dict(zip(names, (tracks for _, tracks in read), strict=True))
-
-
-def _names(named: list[tuple[Path, str]]) -> list[str]:
-    """A name for each: its own, the folder it is in where names are equal, else its path."""
-    own = [name for _, name in named]
-    folder = [(path if path.is_dir() else path.absolute().parent).name for path, _ in named]
-    names = [
-        name if own.count(name) == 1 else at if folder.count(at) == 1 else str(path)
-        for name, at, (path, _) in zip(own, folder, named, strict=True)
-    ]
-    twice = next((name for name in names if names.count(name) > 1), None)
-    if twice is not None:
-        raise UsageError(f"two sets of tracks are called '{twice}'; give each once")
-    return names
-
-
-def _read_truths(given: list[str], names: list[str]) -> dict[str, Truth]:
-    """The truth of each sequence, from files in order, NAME=FILE, or a folder."""
-    from tracker.log import read_truth
-
-    parts = {text: text.partition("=") for text in given}
-    named = {name: file for name, equals, file in parts.values() if equals and name in names}
-    plain = [text for text in given if not (parts[text][1] and parts[text][0] in names)]
-    if len(plain) == 1 and not named and (len(names) > 1 or Path(plain[0]).is_dir()):
-        folder = Path(plain[0])
-        if folder.is_dir() and not list(folder.glob("truth.*")):
-            return {name: read_truth(_truth_in(folder, name)) for name in names}
-    left = [name for name in names if name not in named]
-    if len(plain) == 1 and len(left) > 1:
-        plain *= len(left)  # several runs over one sequence share its truth
-    if len(plain) != len(left):
-        raise UsageError(
-            f"{len(names)} {'sequence' if len(names) == 1 else 'sequences'} ({', '.join(names)}) "
-            f"but {len(given)} truth files; give one each in order, NAME=FILE, or a folder"
+        verdict_part = {"limits": [verdict.as_dict() for verdict in verdicts]} if asked else {}
+        typer.echo(json.dumps(found.as_dict() | verdict_part, indent=2))
+    else:
+        typer.echo(scores_table(found))
+        if asked:
+            typer.echo("\n" + verdict_table(verdicts))
+        typer.echo(LEGEND, err=True)
+        typer.echo(CAUTION, err=True)
+    if junit is not None:
+        write_junit(junit, verdicts)
+    missed = [verdict for verdict in verdicts if not verdict.met]
+    if missed:
+        first = missed[0]
+        value = "no value" if first.found is None else f"{first.found:.6g}"
+        raise LimitError(
+            f"{len(missed)} of {len(verdicts)} limits not met, the first: {first.where}, "
+            f"{first.limit.words} (found {value})"
         )
-    paths = named | dict(zip(left, plain, strict=True))
-    return {name: read_truth(Path(paths[name])) for name in names}
-
-
-def _truth_in(folder: Path, name: str) -> Path:
-    for place in (folder / name, folder):
-        for pattern in ("truth.*", f"{name}.*") if place == folder / name else (f"{name}.*",):
-            files = sorted(place.glob(pattern)) if place.is_dir() else []
-            if files:
-                return files[0]
-    raise InputError(
-        f"no truth for the sequence '{name}'",
-        path=folder,
-        remedy=f"Expected {name}/truth.* or {name}.* in it.",
-    )

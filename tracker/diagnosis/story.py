@@ -110,7 +110,9 @@ def _options(item: Decision) -> str:
             row.append(EMPTY if gate is None or gate.overlap is None else f"{gate.overlap:.2f}")
         row += ["" if option.chosen else nats(option.force_cost), option.odds]
         rows.append([*row, _role(option, by_track)])
-    scope = f"{item.component_tracks} tracks and {item.component_detections} detections"
+    scope = f"{_count(item.component_tracks, 'track')} and " + _count(
+        item.component_detections, "detection"
+    )
     return (
         f"What could have been decided (tier '{item.tier_name}', {scope} decided together; costs "
         "in nats):\n" + _aligned(rows, left={0, len(rows[0]) - 1})
@@ -253,8 +255,13 @@ def _others(told: Explanation) -> str:
         if view.detection is not None:
             got = detection_name(view.detection, told.line_of(view.detection))
         verb = "born from" if view.state is None else f"{view.state}, got"
-        lines.append(f"  track {view.track}: {verb} {got}; afterwards {view.afterwards}")
+        margin = "" if view.margin is None else f" (margin {nats(view.margin)})"
+        lines.append(f"  track {view.track}: {verb} {got}{margin}; afterwards {view.afterwards}")
     return "The other tracks named:\n" + "\n".join(lines) if lines else ""
+
+
+def _count(number: int, noun: str) -> str:
+    return f"{number} {noun}" + ("" if number == 1 else "s")
 
 
 def _measured(value: float, sigma: float) -> str:

@@ -33,6 +33,8 @@ def _track(inquiry: Inquiry, track: int, shown: dict) -> TrackView:
         position = dict(zip(names, record.estimate[row].tolist(), strict=True))
         sigma = dict(zip(names, spread.tolist(), strict=True))
         covariance = tuple(record.covariance[row][np.triu_indices(len(names))].tolist())
+    decided = inquiry.rows_of(track=track)
+    margin = float(record.decisions.margin[decided[-1]]) if len(decided) else math.inf
     births = {born: detection for detection, born in record.born.items()}
     return TrackView(
         track=track,
@@ -43,6 +45,7 @@ def _track(inquiry: Inquiry, track: int, shown: dict) -> TrackView:
         sigma=sigma,
         covariance=covariance,
         detection=births.get(track) if row is None else record.given(track),
+        margin=margin if math.isfinite(margin) else None,
         confidence=shown.get("confidence"),
         label=shown.get("label"),
         born_frame=life.born,

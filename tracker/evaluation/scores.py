@@ -116,6 +116,9 @@ RATIOS = (
     "hota", "deta", "assa", "loca", "mota", "motp", "idf1", "idp", "idr", "precision", "recall",
 )  # fmt: skip
 
+# Every score that has one number, by the name that --json and limits use.
+LIMITED = (*RATIOS, *(item.name for item in fields(Counts)))
+
 
 def _ratio(part: float, whole: float) -> float | None:
     return part / whole if whole else None

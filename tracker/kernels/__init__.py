@@ -29,4 +29,12 @@ def _forget_stale_code(folder: Path) -> None:
         (cache / STAMP).write_text(stamp)
 
 
+def compiled_before() -> bool:
+    """Whether compiled code is kept beside the sources, so that no wait is to be expected.
+
+    False also where numba keeps it elsewhere because the package folder cannot be written.
+    """
+    return any((Path(__file__).parent / "__pycache__").glob("*.nbi"))
+
+
 _forget_stale_code(Path(__file__).parent)

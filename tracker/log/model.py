@@ -15,6 +15,8 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from tracker.errors import UsageError
+
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 Codes = NDArray[np.int32]
@@ -92,19 +94,30 @@ class Frame:
     def of_boxes(
         cls, number: int, time: float, corners: ArrayLike, score: ArrayLike | None = None
     ) -> Frame:
-        """A frame of boxes given as (m, 4) left, top, width, height."""
-        return cls._of(number, time, box_centre(_table(corners, 4)), score)
+        """A frame of boxes given as (m, 4) left, top, width, height.
+
+        Raises UsageError for values that are not finite or sizes that are not positive.
+        """
+        table = _table(corners, 4)
+        if not (table[:, 2:] > 0.0).all():
+            raise UsageError(f"frame {number}: widths and heights of boxes are above 0")
+        return cls._of(number, time, box_centre(table), score)
 
     @classmethod
     def of_points(
         cls, number: int, time: float, points: ArrayLike, score: ArrayLike | None = None
     ) -> Frame:
-        """A frame of points given as (m, 2) x, y."""
+        """A frame of points given as (m, 2) x, y.
+
+        Raises UsageError for values that are not finite.
+        """
         return cls._of(number, time, _table(points, 2), score)
 
     @classmethod
     def _of(cls, number: int, time: float, z: Floats, score: ArrayLike | None) -> Frame:
         count = len(z)
+        if not np.isfinite(z).all():
+            raise UsageError(f"frame {number} has values that are not finite numbers")
         return cls(
             number=number,
             time=time,

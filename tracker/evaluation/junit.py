@@ -1,0 +1,78 @@
+"""Verdicts as a JUnit XML report, which continuous integration systems read."""
+
+from __future__ import annotations
+
+import os
+import re
+import tempfile
+from collections.abc import Sequence
+from pathlib import Path
+from xml.etree import ElementTree
+
+from tracker.errors import OutputError
+from tracker.evaluation.limits import Verdict
+
+SUITE = "margent evaluate"
+# What XML 1.0 cannot hold even when escaped.
+_FORBIDDEN = re.compile("[^\t\n\r\u0020-\ud7ff\ue000-\ufffd\U00010000-\U0010ffff]")
+
+
+def junit_text(verdicts: Sequence[Verdict]) -> str:
+    """One suite with a test case a limit; those not met are failures.
+
+    Elements and attributes are those that the common schema of JUnit reports requires. There is
+    no time of day in it, so that equal results have equal bytes.
+    """
+    failures = sum(not verdict.met for verdict in verdicts)
+    counts = {
+        "name": SUITE,
+        "tests": str(len(verdicts)),
+        "failures": str(failures),
+        "errors": "0",
+        "time": "0",
+    }
+    suites = ElementTree.Element("testsuites", counts)
+    suite = ElementTree.SubElement(suites, "testsuite", counts | {"skipped": "0"})
+    for verdict in verdicts:
+        case = ElementTree.SubElement(
+            suite,
+            "testcase",
+            {"classname": _clean(verdict.where), "name": verdict.limit.words, "time": "0"},
+        )
+        if not verdict.met:
+            found = "has no value" if verdict.found is None else f"is {verdict.found:.6g}"
+            message = f"{verdict.limit.score} {found}, the limit is {verdict.limit.words}"
+            failure = ElementTree.SubElement(case, "failure", {"message": message, "type": "limit"})
+            failure.text = message
+    ElementTree.indent(suites)
+    return (
+        '<?xml version="1.0" encoding="UTF-8"?>\n'
+        + ElementTree.tostring(suites, encoding="unicode")
+        + "\n"
+    )
+
+
+def write_junit(path: Path, verdicts: Sequence[Verdict]) -> None:
+    """Write the report; it appears complete or not at all.
+
+    Raises OutputError where it cannot be written.
+    """
+    temporary = None
+    try:
+        path.parent.mkdir(parents=True, exist_ok=True)
+        with tempfile.NamedTemporaryFile(
+            "w", encoding="utf-8", dir=path.parent, prefix=f".{path.name}-", delete=False
+        ) as file:
+            temporary = file.name
+            file.write(junit_text(verdicts))
+        os.chmod(temporary, 0o644)
+        os.replace(temporary, path)
+    except OSError as error:
+        if temporary is not None:
+            Path(temporary).unlink(missing_ok=True)
+        reason = error.strerror or str(error)
+        raise OutputError(f"cannot be written: {reason}", path=path) from None
+
+
+def _clean(text: str) -> str:
+    return _FORBIDDEN.sub("?", text)
