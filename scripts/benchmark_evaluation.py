@@ -86,7 +86,7 @@ def measure(frames: int, objects: int, rounds: int) -> None:
         moments = [time.perf_counter()]
         both = pairs(tracks, truth, 0.5)
         moments.append(time.perf_counter())
-        mine = count(both, find_couples(both), np.ones(len(both.scene.distance), bool))
+        mine = count(both, find_couples(both), np.ones(len(both.scene.distance), bool)).counts
         moments.append(time.perf_counter())
         theirs = referee_counts(both.scene)
         moments.append(time.perf_counter())

@@ -125,17 +125,18 @@ def test_missing_file(tmp_path):
         read_limits(tmp_path / "none.toml", ["half"])
 
 
+ALLOWED = {  # element: its attributes, those required, its children
+    "testsuites": ({"name", "tests", "failures", "errors", "time"}, set(), {"testsuite"}),
+    "testsuite": (
+        {"name", "tests", "failures", "errors", "skipped", "time"}, {"name"}, {"testcase"},
+    ),
+    "testcase": ({"name", "classname", "time"}, {"name"}, {"failure"}),
+    "failure": ({"message", "type"}, set(), set()),
+}  # fmt: skip
+
+
 class TestJunit:
     """Against the common schema (Jenkins' junit-10.xsd, from memory)."""
-
-    ALLOWED = {  # element: its attributes, those required, its children
-        "testsuites": ({"name", "tests", "failures", "errors", "time"}, set(), {"testsuite"}),
-        "testsuite": (
-            {"name", "tests", "failures", "errors", "skipped", "time"}, {"name"}, {"testcase"},
-        ),
-        "testcase": ({"name", "classname", "time"}, {"name"}, {"failure"}),
-        "failure": ({"message", "type"}, set(), set()),
-    }  # fmt: skip
 
     def verdicts(self, scored):
         return judge(scored, [parse_limit("idf1>=0.7"), parse_limit("switches<=0", "half")])
@@ -145,7 +146,7 @@ class TestJunit:
         root = ElementTree.fromstring(text.encode())
         assert root.tag == "testsuites"
         for element in root.iter():
-            attributes, required, children = self.ALLOWED[element.tag]
+            attributes, required, children = ALLOWED[element.tag]
             assert required <= set(element.attrib) <= attributes
             assert {child.tag for child in element} <= children
         suite = root[0]

@@ -3,12 +3,17 @@
 from __future__ import annotations
 
 import json
+from dataclasses import replace
 from pathlib import Path
-from typing import Annotated
+from typing import TYPE_CHECKING, Annotated
 
 import typer
 
 from tracker.errors import LimitError, UsageError
+
+if TYPE_CHECKING:
+    from tracker.evaluation import Scope
+    from tracker.log.model import Truth
 
 
 def evaluate(
@@ -42,6 +47,30 @@ def evaluate(
         list[str] | None,
         typer.Option(help="Take out track boxes that lie on truth with this label. Repeatable."),
     ] = None,
+    ignore_region: Annotated[
+        list[str] | None,
+        typer.Option(
+            metavar="[NAME=]FILE",
+            help="Do not score what lies (by its centre) in these polygons, of all sequences or of "
+            "one: TOML with [[region]] points = [[x, y], ...], GeoJSON or WKT. Repeatable.",
+        ),
+    ] = None,
+    visibility_floor: Annotated[
+        float | None, typer.Option(help="Ignore truth that is less visible than this, 0 to 1.")
+    ] = None,
+    frame_stride: Annotated[
+        int | None,
+        typer.Option(
+            help="Score every k-th annotated frame and no other; 1 leaves out frames without truth."
+        ),
+    ] = None,
+    per_class: Annotated[
+        bool,
+        typer.Option(
+            help="Score each class of the truth on its own too; the others are ignored meanwhile, "
+            "and tracks with their labels left out."
+        ),
+    ] = False,
     coasting: Annotated[
         str, typer.Option(help="Count coasting rows: 'as-reported', 'yes' or 'no'.")
     ] = "as-reported",
@@ -53,6 +82,13 @@ def evaluate(
             "tracks together, growing with their square)."
         ),
     ] = "on",
+    self_check: Annotated[
+        bool,
+        typer.Option(
+            help="First score the truth against itself, which must give 100%; exit code 1 if not."
+        ),
+    ] = False,
+    workers: Annotated[int, typer.Option(min=1, help="Processes; each takes whole sequences.")] = 1,
     limit: Annotated[
         list[str] | None,
         typer.Option(
@@ -85,6 +121,7 @@ def evaluate(
     from tracker.evaluation.junit import write_junit
     from tracker.evaluation.limits import judge, parse_limit, read_limits, verdict_table
     from tracker.evaluation.table import CAUTION, LEGEND, scores_table
+    from tracker.kernels import compiled_before
 
     counted = {"as-reported": None, "yes": True, "no": False}
     if coasting not in counted:
@@ -97,6 +134,8 @@ def evaluate(
         tuple(score_class) if score_class else None,
         tuple(ignore_class or ()),
         counted[coasting],
+        visibility_floor=visibility_floor,
+        frame_stride=frame_stride,
     )
     asked = [parse_limit(text) for text in limit or ()]
     if junit is not None and not asked and limits is None:
@@ -105,10 +144,17 @@ def evaluate(
     if limits is not None:
         asked += read_limits(limits, list(sequences))
     truths = truths_by_name(truth, list(sequences))
+    scopes = _with_regions(scope, list(sequences), ignore_region or [])
+    if not compiled_before():
+        typer.echo("compiling for this machine, once; this takes some seconds ...", err=True)
+    if self_check:
+        _check_truth(truths, scopes, referee == "on")
     found = evaluate_all(
         {name: (sequences[name], truths[name]) for name in truths},
-        scope,
+        scopes,
         with_referee=referee == "on",
+        per_class=per_class,
+        workers=workers,
     )
     verdicts = judge(found, asked)
     if json_:
@@ -130,3 +176,35 @@ def evaluate(
             f"{len(missed)} of {len(verdicts)} limits not met, the first: {first.where}, "
             f"{first.limit.words} (found {value})"
         )
+
+
+def _with_regions(scope: Scope, names: list[str], given: list[str]) -> dict[str, Scope]:
+    """The scope of each sequence, with the regions for all and its own."""
+    from tracker.evaluation import read_regions
+
+    scopes = dict.fromkeys(names, scope)
+    for text in given:
+        name, equals, file = text.partition("=")
+        one = bool(equals) and name in names
+        regions = read_regions(Path(file if one else text))
+        for target in [name] if one else names:
+            own = scopes[target]
+            scopes[target] = replace(own, regions_ignored=own.regions_ignored + regions)
+    return scopes
+
+
+def _check_truth(truths: dict[str, Truth], scopes: dict[str, Scope], with_referee: bool) -> None:
+    """Score every truth against itself."""
+    from tracker.evaluation import is_perfect, self_check
+
+    for name, truth in truths.items():
+        scores = self_check(truth, scopes[name], with_referee=with_referee)
+        if not is_perfect(scores):
+            c = scores.counts
+            raise LimitError(
+                f"self-check of '{name}': the truth against itself has {c.misses} misses, "
+                f"{c.false_positives} false positives, {c.switches} switches and "
+                f"{c.truth_boxes - c.identity_matches} wrong identities; do objects lie exactly on "
+                "each other?"
+            )
+        typer.echo(f"self-check of '{name}': 100% ({scores.counts.matches} rows)", err=True)

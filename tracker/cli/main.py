@@ -17,6 +17,7 @@ import typer
 
 from tracker.cli.associate import associate
 from tracker.cli.evaluate import evaluate
+from tracker.cli.explain import explain
 from tracker.cli.inspect import inspect
 from tracker.cli.simulate import simulate
 from tracker.errors import EXIT_DONE, EXIT_INTERNAL, EXIT_USAGE, MargentError
@@ -38,7 +39,7 @@ app = typer.Typer(
     rich_markup_mode=None,
     pretty_exceptions_enable=False,
 )
-for command in (associate, evaluate, inspect, simulate):
+for command in (associate, evaluate, explain, inspect, simulate):
     app.command()(command)
 
 

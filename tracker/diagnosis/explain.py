@@ -47,7 +47,10 @@ def explain(
     not in it, naming what is; UsageError if more than one subject is named or `others` has none.
     """
     if sum(given is not None for given in (track, detection, line)) > 1:
-        raise UsageError("name a track, a detection or a line, only one of them")
+        raise UsageError(
+            "name a track, a detection or a line, only one of them; to ask about a pair, name one "
+            "and give the other as 'why not'"
+        )
     if (others or other_lines) and track is None and detection is None and line is None:
         raise UsageError("'why not' needs a track, or a detection, to be asked about")
     if other_lines and track is None:

@@ -139,8 +139,9 @@ class TrackView:
     state : before the decision, None if it was born in this frame or ended before its detections
     were looked at.   state_after : after it.   position, sigma : where it was expected, by
     coordinate, with standard deviations, measurement noise not included.   covariance : upper
-    triangle of the expected position's, row by row.   detection : what it was given, or born from.
-    margin : of that decision, in the last tier it took part in.   afterwards : what became of it, in words.
+    triangle of the expected position's, row by row.   detection : what it was given, or born
+    from.   margin : of that decision, in the last tier it took part in.   afterwards : what became
+    of it, in words.
     """
 
     track: int

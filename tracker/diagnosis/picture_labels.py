@@ -7,10 +7,19 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 DIRECTIONS = 16
-DISTANCES = (14.0, 26.0, 42.0, 62.0, 86.0, 114.0)  # points of 1/72 inch
+DISTANCES = (8.0, 18.0, 32.0, 50.0, 72.0, 98.0, 130.0, 170.0)  # points of 1/72 inch
+FONT_SIZE = 8.5
+PADDING = 0.25  # of the font size, around the text
 GAP = 2.0  # pixels between labels
+
+# What a place costs, in pixels of covered area.
+A_POINT_AWAY = 4.0
+A_TURN = 250.0  # half a turn away from the preferred direction
+STEP = 12.0  # pixels between the samples of a line …
+THIN = 5.0  # … and half the size of the box that each stands for
 
 
 @dataclass(frozen=True, slots=True)
@@ -31,10 +40,13 @@ def place_labels(figure: Any, axes: Any, labels: list[Label], taken: list[Any]) 
     taken : boxes in pixels (left, bottom, right, top).   Labels are placed in the order given,
     each at the best of fixed places around its point, so the picture is always the same.
     """
+    from matplotlib.text import Text
+
     renderer = figure.canvas.get_renderer()
     frame = axes.get_window_extent(renderer)
     scale = figure.dpi / 72.0
     occupied = [np.asarray(box, float) for box in taken]
+    placed: list[NDArray] = []
     for label in labels:
         note = axes.annotate(
             label.text,
@@ -43,10 +55,10 @@ def place_labels(figure: Any, axes: Any, labels: list[Label], taken: list[Any]) 
             textcoords="offset points",
             ha="center",
             va="center",
-            fontsize=8.5,
+            fontsize=FONT_SIZE,
             zorder=10,
             bbox={
-                "boxstyle": "round,pad=0.25",
+                "boxstyle": f"round,pad={PADDING}",
                 "facecolor": "white",
                 "edgecolor": label.colour,
                 "linewidth": 1.0,
@@ -55,43 +67,51 @@ def place_labels(figure: Any, axes: Any, labels: list[Label], taken: list[Any]) 
             arrowprops={
                 "arrowstyle": "-",
                 "color": label.colour,
-                "linewidth": 0.8,
+                "linewidth": 0.9,
                 "shrinkA": 0.0,
-                "shrinkB": 2.0,
+                "shrinkB": 1.0,
             },
         )
-        extent = note.get_bbox_patch().get_window_extent(renderer)
-        half = 0.5 * np.array([extent.width, extent.height])
+        extent = Text.get_window_extent(note, renderer)
+        half = 0.5 * np.array([extent.width, extent.height]) + PADDING * FONT_SIZE * scale
         anchor = axes.transData.transform((label.x, label.y))
         best = math.inf
         chosen = (0.0, 0.0)
         where = np.zeros(4)
-        for offset in _offsets(label, half / scale):
-            centre = anchor + np.array(offset) * scale
+        for x, y, penalty in _places(label, half / scale):
+            centre = anchor + np.array([x, y]) * scale
             box = np.concatenate((centre - half - GAP, centre + half + GAP))
-            worse = _covered(box, occupied) + 3.0 * _beyond(box, frame)
-            worse += 0.02 * half[1] * math.hypot(*offset) * scale  # near is good
+            worse = penalty + _covered(box, occupied) + 3.0 * _beyond(box, frame)
+            worse += sum(_covered(part, placed) for part in along(anchor, centre))
             if worse < best:
-                best, chosen, where = worse, offset, box
+                best, chosen, where = worse, (x, y), box
         note.set_position(chosen)
-        occupied.append(where)
+        placed.append(where)
+        occupied += [where, *along(anchor, 0.5 * (where[:2] + where[2:]))]
 
 
-def _offsets(label: Label, half: Any) -> list[tuple[float, float]]:
-    """Offsets in points, preferred direction and small distances first."""
+def along(one: NDArray, other: NDArray) -> list[NDArray]:
+    """Small boxes in pixels along a line, so that labels keep off it."""
+    steps = max(1, math.ceil(float(np.hypot(*(other - one))) / STEP))
+    points = [one + (other - one) * k / steps for k in range(steps + 1)]
+    return [np.concatenate((point - THIN, point + THIN)) for point in points]
+
+
+def _places(label: Label, half: NDArray) -> list[tuple[float, float, float]]:
+    """Offsets of a label's centre in points, and what each is worse than the preferred one.
+
+    half : half width and height of the label in points; wide labels go further to the side than
+    up, so that the point stays uncovered.
+    """
     preferred = math.atan2(label.dy, label.dx)
     found = []
     for distance in DISTANCES:
         for k in range(DIRECTIONS):
             turn = (k + 1) // 2 * (1 if k % 2 else -1) * 2.0 * math.pi / DIRECTIONS
-            angle = preferred + turn
-            # Wide labels go further to the side than up, so that the point stays uncovered.
-            found.append(
-                (
-                    math.cos(angle) * (distance + half[0]),
-                    math.sin(angle) * (distance + half[1]),
-                )
-            )
+            x = math.cos(preferred + turn) * (distance + half[0])
+            y = math.sin(preferred + turn) * (distance + half[1])
+            penalty = A_POINT_AWAY * (distance - DISTANCES[0]) + A_TURN * abs(turn) / math.pi
+            found.append((x, y, penalty))
     return found
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import textwrap
 from collections.abc import Iterable, Sequence
 
 from tracker.diagnosis.explanation import (
@@ -11,31 +12,34 @@ from tracker.diagnosis.explanation import (
     Decision,
     Explanation,
     Moment,
+    TrackView,
     WhyNot,
 )
 from tracker.diagnosis.words import changes_words, detection_name, gate_words, nats, odds
 
 EMPTY = "–"
+LINE_LENGTH = 100
 
 
 def tell(told: Explanation) -> str:
     """The whole story, paragraphs parted by empty lines; ends with a line feed."""
-    parts = [_title(told)]
+    parts = [title(told)]
     if told.track is None and told.detection is None:
-        parts += [_brief(told, item) for item in told.decisions]
+        parts += briefs(told, told.decisions)
         parts.append(_hint(told))
     else:
         for item in told.decisions:
-            parts += [_headline(told, item), _options(item), _outside(item)]
+            parts += [headline(told, item), _options(item), _outside(item)]
         parts.append(_birth(told))
         parts += [_why_not(told, item) for item in told.why_not]
         parts += [_track(told), _history(told), _others(told)]
-    parts += [f"Note: {note}" for note in told.notes]
-    parts.append(told.caution)
+    parts += [_wrapped(f"Note: {note}", hang="") for note in told.notes]
+    parts.append(_wrapped(told.caution, hang=""))
     return "\n\n".join(part for part in parts if part) + "\n"
 
 
-def _title(told: Explanation) -> str:
+def title(told: Explanation) -> str:
+    """Run, frame, and what was asked about."""
     time = "" if told.time is None else f" ({told.time:.3f} s)"
     title = f"{told.run}, frame {told.frame}{time}"
     if told.track is not None:
@@ -58,7 +62,8 @@ def _what(told: Explanation, item: Decision) -> str:
     return f"{name[0].upper()}{name[1:]} was given to no track"
 
 
-def _headline(told: Explanation, item: Decision) -> str:
+def headline(told: Explanation, item: Decision) -> str:
+    """What was decided, how much worse the next best answer is, and what it would have changed."""
     several = any(other.tier != item.tier for other in told.decisions)
     said = [_what(told, item) + (f" in tier '{item.tier_name}'." if several else ".")]
     if item.margin is None:
@@ -74,18 +79,30 @@ def _headline(told: Explanation, item: Decision) -> str:
     best = item.runner_up
     if best is not None and best.changes:
         said.append(f"In it {changes_words(best.changes, told.line_of)}.")
-    return "\n".join(said)
+    return "\n".join(map(_wrapped, said))
 
 
-def _brief(told: Explanation, item: Decision) -> str:
-    """One decision of a whole frame in two lines."""
-    margin = "a tie" if item.margin is not None and item.margin < 0.005 else nats(item.margin)
-    lines = [f"{margin} ({item.odds})  {_what(told, item)}."]
-    best = item.runner_up
-    if best is not None:
-        indent = " " * (lines[0].index(")") + 3)
-        lines.append(f"{indent}Runner-up: {changes_words(best.changes, told.line_of)}.")
-    return "\n".join(lines)
+def briefs(told: Explanation, decisions: Iterable[Decision]) -> list[str]:
+    """Decisions of a whole frame, some lines each; those that one exchange would undo together."""
+    groups: dict[object, list[Decision]] = {}
+    for item in decisions:
+        best = item.runner_up
+        key = (item.decision, item.track, item.detection) if best is None else best.changes
+        groups.setdefault(key, []).append(item)
+    return [_brief(told, group) for group in groups.values()]
+
+
+def _brief(told: Explanation, group: Sequence[Decision]) -> str:
+    first = group[0]
+    margin = "a tie" if first.margin is not None and first.margin < 0.005 else nats(first.margin)
+    head = f"{margin} ({first.odds})  "
+    lines = [f"{_what(told, item)}." for item in group]
+    if first.runner_up is not None:
+        changes = changes_words(first.runner_up.changes, told.line_of)
+        lines.append(f"Runner-up: {changes}.")
+    width = max(LINE_LENGTH - len(head), 40)
+    whole = "\n".join(textwrap.fill(line, width, subsequent_indent="    ") for line in lines)
+    return head + textwrap.indent(whole, " " * len(head)).lstrip()
 
 
 def _hint(told: Explanation) -> str:
@@ -153,7 +170,8 @@ def _outside(item: Decision) -> str:
     for near in item.outside:
         name = detection_name(near.detection, near.line) if by_track else f"track {near.track}"
         overlap = "" if near.gate.overlap is None else f" (IoU {near.gate.overlap:.2f})"
-        lines.append(f"  {name}{overlap}: {gate_words(near.gate)}")
+        why = gate_words(near.gate).removeprefix("outside the gate: ")
+        lines.append(_wrapped(f"  {name}{overlap}: {why}"))
     return "Nearest outside the gate (from predictions and detections):\n" + "\n".join(lines)
 
 
@@ -178,7 +196,7 @@ def _birth(told: Explanation) -> str:
 def _why_not(told: Explanation, item: WhyNot) -> str:
     pair = f"track {item.track} and {detection_name(item.detection, item.line)}"
     reason = item.reason[0].upper() + item.reason[1:]
-    return f"Why not {pair}? {reason}."
+    return _wrapped(f"Why not {pair}? {reason}.")
 
 
 def _track(told: Explanation) -> str:
@@ -251,17 +269,27 @@ def _others(told: Explanation) -> str:
     for view in told.tracks:
         if view.track == subject:
             continue
-        got = "no detection"
-        if view.detection is not None:
-            got = detection_name(view.detection, told.line_of(view.detection))
-        verb = "born from" if view.state is None else f"{view.state}, got"
-        margin = "" if view.margin is None else f" (margin {nats(view.margin)})"
-        lines.append(f"  track {view.track}: {verb} {got}{margin}; afterwards {view.afterwards}")
+        lines.append(_wrapped(f"  track {view.track}: {_fate(told, view)}"))
     return "The other tracks named:\n" + "\n".join(lines) if lines else ""
 
 
 def _count(number: int, noun: str) -> str:
     return f"{number} {noun}" + ("" if number == 1 else "s")
+
+
+def _fate(told: Explanation, view: TrackView) -> str:
+    """What another track was and got, and what became of it."""
+    got = "no detection"
+    if view.detection is not None:
+        got = detection_name(view.detection, told.line_of(view.detection))
+    margin = "" if view.margin is None else f" (margin {nats(view.margin)})"
+    if view.state is not None:
+        return f"{view.state}, got {got}{margin}; afterwards {view.afterwards}"
+    if view.born_frame == told.frame:
+        return f"born from {got}; afterwards {view.afterwards}"
+    if view.ended_frame is not None and view.ended_frame <= told.frame:
+        return f"ended in frame {view.ended_frame}"
+    return f"not yet born; {view.afterwards}"
 
 
 def _measured(value: float, sigma: float) -> str:
@@ -270,6 +298,13 @@ def _measured(value: float, sigma: float) -> str:
     if sigma > 0.0 and math.isfinite(sigma):
         decimals = min(max(1 - math.floor(math.log10(sigma)), 0), 9)
     return f"{value:.{decimals}f} ± {sigma:.{decimals}f}"
+
+
+def _wrapped(text: str, hang: str = "    ") -> str:
+    """Lines of bearable length; those after the first stand in by `hang`."""
+    return textwrap.fill(
+        text, LINE_LENGTH, subsequent_indent=hang, break_long_words=False, break_on_hyphens=False
+    )
 
 
 def _aligned(rows: Sequence[Sequence[str]], left: Iterable[int]) -> str:

@@ -2,46 +2,52 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from dataclasses import dataclass
+import difflib
+from collections.abc import Iterator, Mapping
+from concurrent.futures import ProcessPoolExecutor
+from concurrent.futures.process import BrokenProcessPool
+from dataclasses import dataclass, field, replace
+from multiprocessing import get_context
 from typing import Any
 
+from tracker.errors import InternalError, UsageError
 from tracker.evaluation import referee
 from tracker.evaluation.counts import count
 from tracker.evaluation.couples import find_couples
-from tracker.evaluation.hota import HotaCounts, count_hota
+from tracker.evaluation.durations import measure_durations
+from tracker.evaluation.hota import count_hota
 from tracker.evaluation.scope import Scope, close_pairs, scored_rows
-from tracker.evaluation.scores import Counts, Scores
-from tracker.log.model import Truth
+from tracker.evaluation.scores import Scores
+from tracker.evaluation.set_distance import measure_sets
+from tracker.log.model import Kind, Truth
 from tracker.results.tracks import Tracks
 
 
 @dataclass(frozen=True, slots=True)
 class Evaluation:
-    """Scores of several sequences; `overall` comes from their summed counts."""
+    """Scores of several sequences; `overall` comes from their summed counts, and so do those of
+    each class (none unless asked for)."""
 
     sequences: dict[str, Scores]
+    classes: dict[str, Scores] = field(default_factory=dict)
 
     @property
     def overall(self) -> Scores:
-        counts, hota = Counts(), HotaCounts.none()
-        for scores in self.sequences.values():
-            counts += scores.counts
-            hota += scores.hota_counts
-        return Scores(counts, hota)
+        return Scores.total(self.sequences.values())
 
     def as_dict(self) -> dict[str, Any]:
         """What `margent evaluate --json` prints."""
-        return {
-            "overall": self.overall.as_dict(),
-            "sequences": {name: scores.as_dict() for name, scores in self.sequences.items()},
+        parts = {"sequences": self.sequences} | ({"classes": self.classes} if self.classes else {})
+        return {"overall": self.overall.as_dict()} | {
+            part: {name: scores.as_dict() for name, scores in found.items()}
+            for part, found in parts.items()
         }
 
 
 def evaluate(
     tracks: Tracks, truth: Truth, scope: Scope | None = None, *, with_referee: bool = True
 ) -> Scores:
-    """Score one sequence: CLEAR MOT, identity metrics and HOTA.
+    """Score one sequence: CLEAR MOT, identity metrics, HOTA, GOSPA and OSPA, durations.
 
     with_referee : whether motmetrics counts too and has to agree.
 
@@ -52,22 +58,118 @@ def evaluate(
     both = scored_rows(tracks, truth, scope)
     close = close_pairs(both, truth.kind, scope)
     couples = find_couples(both)
-    counts = count(both, couples, close)
+    found = count(both, couples, close)
     if with_referee:
-        referee.check(counts, both.only_pairs(close), tracks.name)
-    return Scores(counts, count_hota(both, couples))
+        referee.check(found.counts, found.scene, tracks.name)
+    return Scores(
+        found.counts,
+        count_hota(both, couples),
+        measure_sets(found.scene, _cut_off(truth.kind, scope)),
+        measure_durations(found.scene, found.match, found.own_track, both.tracks),
+    )
+
+
+def _cut_off(kind: Kind, scope: Scope) -> float:
+    """Largest distance of a pair."""
+    return (scope.distance_threshold or 0.0) if kind is Kind.POINT else 1.0 - scope.iou_threshold
+
+
+def evaluate_classes(
+    tracks: Tracks, truth: Truth, scope: Scope | None = None, *, with_referee: bool = True
+) -> dict[str, Scores]:
+    """Score each class of the truth on its own, by label.
+
+    The other classes are ignored meanwhile, and tracks that have the label of one of them are
+    left out: a track with the wrong label is a miss of the right class. Raises as `evaluate`.
+    """
+    scope = (scope or Scope()).for_truth(truth)
+    found = {}
+    for label in truth.labels:
+        if label in scope.classes_ignored or label not in (scope.classes_scored or truth.labels):
+            continue
+        others = tuple(other for other in truth.labels if other != label)
+        alone = replace(
+            scope, classes_scored=(label,), classes_ignored=others, track_classes_left_out=others
+        )
+        found[label] = evaluate(tracks, truth, alone, with_referee=with_referee)
+    return found
 
 
 def evaluate_all(
     sequences: Mapping[str, tuple[Tracks, Truth]],
-    scope: Scope | None = None,
+    scope: Scope | Mapping[str, Scope] | None = None,
     *,
     with_referee: bool = True,
+    per_class: bool = False,
+    workers: int = 1,
 ) -> Evaluation:
-    """Score several sequences by name. Raises what `evaluate` raises."""
+    """Score several sequences by name.
+
+    scope : of all, or of each by name.   workers : processes; each takes whole sequences, and the
+    scores do not depend on how many there are.
+
+    Raises what `evaluate` raises, and UsageError for classes that no truth has.
+    """
+    scopes = {
+        name: (scope.get(name) if isinstance(scope, Mapping) else scope) or Scope()
+        for name in sequences
+    }
+    _check_classes(sequences, scopes)
+    jobs = {
+        name: (tracks, truth, scopes[name], with_referee, per_class)
+        for name, (tracks, truth) in sequences.items()
+    }
+    found = dict(_run(jobs, workers))
+    labels = dict.fromkeys(label for _, classes in found.values() for label in classes)
     return Evaluation(
+        {name: scores for name, (scores, _) in found.items()},
         {
-            name: evaluate(tracks, truth, scope, with_referee=with_referee)
-            for name, (tracks, truth) in sequences.items()
-        }
+            label: Scores.total(classes[label] for _, classes in found.values() if label in classes)
+            for label in sorted(labels)
+        },
     )
+
+
+Job = tuple[Tracks, Truth, Scope, bool, bool]
+Found = tuple[Scores, dict[str, Scores]]
+
+
+def _run(jobs: dict[str, Job], workers: int) -> Iterator[tuple[str, Found]]:
+    if workers == 1 or len(jobs) < 2:
+        for name, job in jobs.items():
+            yield name, _evaluate_one(*job)
+        return
+    # Spawned, not forked: a fork would copy locks of threads that the parent may have started.
+    with ProcessPoolExecutor(min(workers, len(jobs)), mp_context=get_context("spawn")) as pool:
+        pending = {name: pool.submit(_evaluate_one, *job) for name, job in jobs.items()}
+        for name, future in pending.items():
+            try:
+                yield name, future.result()
+            except BrokenProcessPool:
+                raise InternalError(
+                    f"'{name}': the worker process died (out of memory?); try fewer --workers or "
+                    "--referee off"
+                ) from None
+
+
+def _evaluate_one(
+    tracks: Tracks, truth: Truth, scope: Scope, with_referee: bool, per_class: bool
+) -> Found:
+    scores = evaluate(tracks, truth, scope, with_referee=with_referee)
+    if not per_class:
+        return scores, {}
+    return scores, evaluate_classes(tracks, truth, scope, with_referee=with_referee)
+
+
+def _check_classes(
+    sequences: Mapping[str, tuple[Tracks, Truth]], scopes: Mapping[str, Scope]
+) -> None:
+    """A class that nobody has is a slip of the pen, and would silently change the scores."""
+    known = sorted({label for _, truth in sequences.values() for label in truth.labels})
+    for scope in scopes.values():
+        for label in (*(scope.classes_scored or ()), *scope.classes_ignored):
+            if label not in known:
+                near = difflib.get_close_matches(label, known, n=1, cutoff=0.5)
+                hint = f"; did you mean '{near[0]}'?" if near else ""
+                there = f"there are {', '.join(known)}" if known else "it has no classes"
+                raise UsageError(f"no truth has the class '{label}' ({there}){hint}")

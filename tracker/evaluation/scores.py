@@ -6,10 +6,14 @@ zero is None: an empty sequence has no precision, not one of 0 or 1.
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import asdict, dataclass, fields
 from typing import Any
 
+from tracker.evaluation.durations import Durations
 from tracker.evaluation.hota import HotaCounts
+from tracker.evaluation.set_distance import NAMES as SET_SCORES
+from tracker.evaluation.set_distance import SetDistances
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,6 +50,20 @@ class Scores:
 
     counts: Counts
     hota_counts: HotaCounts
+    set_distances: SetDistances
+    durations: Durations
+
+    @classmethod
+    def total(cls, parts: Iterable[Scores]) -> Scores:
+        """Scores of the summed counts."""
+        counts, hota = Counts(), HotaCounts.none()
+        sets, durations = SetDistances(), Durations.none()
+        for part in parts:
+            counts += part.counts
+            hota += part.hota_counts
+            sets += part.set_distances
+            durations += part.durations
+        return cls(counts, hota, sets, durations)
 
     @property
     def mota(self) -> float | None:
@@ -108,8 +126,11 @@ class Scores:
     def as_dict(self) -> dict[str, Any]:
         """All scores and counts by name, as `margent evaluate --json` prints them."""
         ratios = {name: getattr(self, name) for name in RATIOS}
-        by_threshold = {"hota_by_threshold": self.hota_counts.by_threshold()}
-        return ratios | asdict(self.counts) | by_threshold
+        nested = {
+            "durations": self.durations.summary(),
+            "hota_by_threshold": self.hota_counts.by_threshold(),
+        }
+        return ratios | asdict(self.counts) | self.set_distances.scores() | nested
 
 
 RATIOS = (
@@ -117,7 +138,7 @@ RATIOS = (
 )  # fmt: skip
 
 # Every score that has one number, by the name that --json and limits use.
-LIMITED = (*RATIOS, *(item.name for item in fields(Counts)))
+LIMITED = (*RATIOS, *(item.name for item in fields(Counts)), *SET_SCORES)
 
 
 def _ratio(part: float, whole: float) -> float | None:

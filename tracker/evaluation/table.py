@@ -38,10 +38,11 @@ COLUMNS = (
 
 
 def scores_table(evaluation: Evaluation) -> str:
-    """One line a sequence and, for several, one overall."""
+    """One line a sequence and, for several, one overall; then one a class, if any."""
     rows: list[tuple[str, Scores]] = list(evaluation.sequences.items())
     if len(rows) > 1:
         rows.append(("OVERALL", evaluation.overall))
+    rows += [(f"class {label}", scores) for label, scores in evaluation.classes.items()]
     table = [["sequence", *(heading for heading, _ in COLUMNS)]]
     table += [[name, *(cell(scores) for _, cell in COLUMNS)] for name, scores in rows]
     widths = [max(len(line[k]) for line in table) for k in range(len(table[0]))]

@@ -10,8 +10,6 @@ from tracker.kernels.grid import meeting_pairs
 from tracker.kernels.overlap import box_overlap
 
 EVERY = 2**62  # as a limit: all pairs
-# Up to this many pairs a frame, a sorted sweep is faster than building a grid.
-SWEEP_PRODUCT = 250_000
 
 
 @njit(cache=True)
@@ -108,45 +106,15 @@ def _meeting_rows(
     for f in range(len(truth_start) - 1):
         a, b = truth_start[f], truth_start[f + 1]
         c, d = track_start[f], track_start[f + 1]
-        if (b - a) * (d - c) > SWEEP_PRODUCT:
-            first, other = meeting_pairs(
-                truth_low[a:b], truth_high[a:b], track_low[c:d], track_high[c:d], EVERY
-            )
-            column = _room(column, count, len(other))
-            for e in range(len(other)):
-                column[count + e] = c + other[e]
-            for i in range(b - a):
-                start[a + i + 1] = count + first[i + 1]
-            count += len(other)
-            continue
-        # Sorted by left edge, what meets a rectangle lies between its right edge and its left
-        # edge minus the widest.
-        order = c + np.argsort(track_low[c:d, 0])
-        left = track_low[order, 0]
-        widest = 0.0
-        for j in range(c, d):
-            widest = max(widest, track_high[j, 0] - track_low[j, 0])
-        for t in range(a, b):
-            column = _room(column, count, d - c)
-            begin = count
-            # A little more than the widest, so that rounding loses none.
-            k = np.searchsorted(left, truth_low[t, 0] - 1.0000001 * widest)
-            while k < d - c and left[k] <= truth_high[t, 0]:
-                j = order[k]
-                if (
-                    track_high[j, 0] >= truth_low[t, 0]
-                    and track_low[j, 1] <= truth_high[t, 1]
-                    and track_high[j, 1] >= truth_low[t, 1]
-                ):
-                    # In order of rows.
-                    hole = count
-                    while hole > begin and column[hole - 1] > j:
-                        column[hole] = column[hole - 1]
-                        hole -= 1
-                    column[hole] = j
-                    count += 1
-                k += 1
-            start[t + 1] = count
+        first, other = meeting_pairs(
+            truth_low[a:b], truth_high[a:b], track_low[c:d], track_high[c:d], EVERY
+        )
+        column = _room(column, count, len(other))
+        for e in range(len(other)):
+            column[count + e] = c + other[e]
+        for i in range(b - a):
+            start[a + i + 1] = count + first[i + 1]
+        count += len(other)
     return start, column[:count].copy()
 
 
