@@ -62,6 +62,26 @@ def test_per_class(capsys, pair):
     assert found["classes"]["cart"]["matches"] == 2
 
 
+def test_a_truth_of_something_else_is_noted(capsys):
+    other = str(SHIPPED / "TUD-Stadtmitte" / "gt.txt")
+    assert run(["evaluate", WORDS[0], "--truth", other, "--iou-threshold", "0.999"]) == 0
+    assert "note: no track is ever on an object" in capsys.readouterr().err
+    assert run(["evaluate", *WORDS]) == 0
+    assert "note:" not in capsys.readouterr().err
+
+
+def test_details(capsys):
+    assert run(["evaluate", *WORDS, "--details"]) == 0
+    out, err = capsys.readouterr()
+    second = out.split("\n\n")[1].splitlines()
+    assert second[0].split() == [
+        "sequence", "LocA", "GOSPA", "localis.", "missed", "false", "OSPA", "length", "delay",
+        "gaps", "recovery", "lost",
+    ]  # fmt: skip
+    assert second[2].startswith("test ")
+    assert "GOSPA and OSPA" in err
+
+
 def test_workers(capsys):
     both = [SHIPPED / name for name in ("TUD-Campus", "TUD-Stadtmitte")]
     words = [str(path / "test.txt") for path in both]

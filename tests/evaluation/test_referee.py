@@ -8,7 +8,7 @@ import pytest
 
 from tests.evaluation.made import make_tracks, make_truth, random_scene, standing
 from tests.log.files import SHIPPED
-from tracker.errors import InternalError
+from tracker.errors import InternalError, UsageError
 from tracker.evaluation import Scope, clearmot, evaluate, referee
 from tracker.log import Kind, read_track_file, read_truth
 from tracker.offline import track_log
@@ -70,3 +70,11 @@ def test_a_difference_is_an_internal_error_that_says_what(monkeypatch):
     with pytest.raises(InternalError, match="switches 0 against 3, misses 0 against 5"):
         evaluate(tracks, truth)
     assert evaluate(tracks, truth, with_referee=False).counts.switches == 0
+
+
+def test_too_large_for_the_referee(monkeypatch):
+    monkeypatch.setattr(referee, "LARGEST_BYTES", 700)
+    tracks, truth = make_tracks(standing([1, 2], 1)), make_truth(standing([1, 2], 7))
+    with pytest.raises(UsageError, match=r"2 objects and tracks and 2 pairs.*--referee off"):
+        evaluate(tracks, truth)
+    assert evaluate(tracks, truth, with_referee=False).counts.matches == 2

@@ -71,6 +71,13 @@ def evaluate(
             "and tracks with their labels left out."
         ),
     ] = False,
+    details: Annotated[
+        bool,
+        typer.Option(
+            help="A second table: localisation, GOSPA and OSPA, and how long tracks, delays, gaps "
+            "and lost identities last. --json has these always, and HOTA at each threshold."
+        ),
+    ] = False,
     coasting: Annotated[
         str, typer.Option(help="Count coasting rows: 'as-reported', 'yes' or 'no'.")
     ] = "as-reported",
@@ -110,17 +117,31 @@ def evaluate(
 ) -> None:
     """Score tracks against truth: HOTA, MOTA, MOTP (a distance), IDF1, switches and the rest.
 
+    HOTA is the mean over similarities 0.05, 0.10 ... 0.95 (Luiten et al. 2021). Overall scores
+    come from summed counts, never from averaged ratios.
+
     Truth in the public benchmark layout with classes is scored on class 1,
     with classes 2, 7, 8 and 12 ignored, unless classes are chosen. Track rows in frames that the
     truth does not reach count as false positives.
 
-    Example: margent evaluate runs/forecourt --truth sample_sequences/forecourt/truth.csv
+    Examples:
+
+    margent evaluate runs/forecourt --truth sample_sequences/forecourt/truth.csv
+
+    margent evaluate runs --truth sample_sequences --limit "idf1>=0.72" --junit scores.xml
     """
+    from tracker.cli.progress import watched
     from tracker.cli.sequences import tracks_by_name, truths_by_name
     from tracker.evaluation import Scope, evaluate_all
     from tracker.evaluation.junit import write_junit
     from tracker.evaluation.limits import judge, parse_limit, read_limits, verdict_table
-    from tracker.evaluation.table import CAUTION, LEGEND, scores_table
+    from tracker.evaluation.table import (
+        CAUTION,
+        DETAILS_LEGEND,
+        LEGEND,
+        details_table,
+        scores_table,
+    )
     from tracker.kernels import compiled_before
 
     counted = {"as-reported": None, "yes": True, "no": False}
@@ -155,16 +176,28 @@ def evaluate(
         with_referee=referee == "on",
         per_class=per_class,
         workers=workers,
+        watch=lambda done, total: watched(done, total=total, label="sequences"),
     )
+    for name, scores in found.sequences.items():
+        if scores.counts.truth_boxes and scores.counts.track_boxes and not scores.counts.matches:
+            typer.echo(
+                f"{name}: note: no track is ever on an object; are frame numbers and coordinates "
+                "those of this truth?",
+                err=True,
+            )
     verdicts = judge(found, asked)
     if json_:
         verdict_part = {"limits": [verdict.as_dict() for verdict in verdicts]} if asked else {}
         typer.echo(json.dumps(found.as_dict() | verdict_part, indent=2))
     else:
         typer.echo(scores_table(found))
+        if details:
+            typer.echo("\n" + details_table(found))
         if asked:
             typer.echo("\n" + verdict_table(verdicts))
         typer.echo(LEGEND, err=True)
+        if details:
+            typer.echo(DETAILS_LEGEND, err=True)
         typer.echo(CAUTION, err=True)
     if junit is not None:
         write_junit(junit, verdicts)

@@ -111,7 +111,9 @@ def _hint(told: Explanation) -> str:
 
 
 def _options(item: Decision) -> str:
-    """Table of what could have been decided."""
+    """Table of what could have been decided, if there was a choice."""
+    if len(item.alternatives) == 1:
+        return ""
     terms = sorted({name for option in item.alternatives for name in option.terms})
     boxes = any(o.gate is not None and o.gate.overlap is not None for o in item.alternatives)
     head = ["", "cost", *(terms if len(terms) > 1 else []), "d²", *(["IoU"] if boxes else [])]

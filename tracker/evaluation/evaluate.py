@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import difflib
-from collections.abc import Iterator, Mapping
+from collections.abc import Callable, Iterable, Iterator, Mapping
 from concurrent.futures import ProcessPoolExecutor
 from concurrent.futures.process import BrokenProcessPool
 from dataclasses import dataclass, field, replace
@@ -102,11 +102,13 @@ def evaluate_all(
     with_referee: bool = True,
     per_class: bool = False,
     workers: int = 1,
+    watch: Callable[[Iterable[Any], int], Iterable[Any]] | None = None,
 ) -> Evaluation:
     """Score several sequences by name.
 
     scope : of all, or of each by name.   workers : processes; each takes whole sequences, and the
-    scores do not depend on how many there are.
+    scores do not depend on how many there are.   watch : wraps the finished sequences and their
+    number, to show progress.
 
     Raises what `evaluate` raises, and UsageError for classes that no truth has.
     """
@@ -119,7 +121,8 @@ def evaluate_all(
         name: (tracks, truth, scopes[name], with_referee, per_class)
         for name, (tracks, truth) in sequences.items()
     }
-    found = dict(_run(jobs, workers))
+    finished = _run(jobs, workers)
+    found = dict(watch(finished, len(jobs)) if watch else finished)
     labels = dict.fromkeys(label for _, classes in found.values() for label in classes)
     return Evaluation(
         {name: scores for name, (scores, _) in found.items()},

@@ -2,6 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable, Sequence
+
+import numpy as np
+
 from tracker.evaluation.evaluate import Evaluation
 from tracker.evaluation.scores import Scores
 
@@ -37,14 +41,44 @@ COLUMNS = (
 )
 
 
+DETAILS_LEGEND = (
+    "GOSPA and OSPA: root mean square over frames, lower is better; localisation, missed and false "
+    "are the mean squares that GOSPA is made of. Durations in frames, as median (largest): track "
+    "length; frames before an object is found; gaps between its pairings; time until it has its "
+    "own track again, and how many objects never had it again."
+)
+DETAILS = (
+    ("LocA", lambda s: _percent(s.loca)),
+    ("GOSPA", lambda s: _number(s.set_distances.scores()["gospa"])),
+    ("localis.", lambda s: _number(s.set_distances.scores()["gospa_localisation"])),
+    ("missed", lambda s: _number(s.set_distances.scores()["gospa_missed"])),
+    ("false", lambda s: _number(s.set_distances.scores()["gospa_false"])),
+    ("OSPA", lambda s: _number(s.set_distances.scores()["ospa"])),
+    ("length", lambda s: _lasting(s, "track_frames")),
+    ("delay", lambda s: _lasting(s, "frames_to_first_match")),
+    ("gaps", lambda s: _lasting(s, "gap_frames")),
+    ("recovery", lambda s: _lasting(s, "identity_recovered_frames")),
+    ("lost", lambda s: str(len(s.durations.values["identity_lost_frames"]))),
+)
+
+
 def scores_table(evaluation: Evaluation) -> str:
     """One line a sequence and, for several, one overall; then one a class, if any."""
+    return _table(evaluation, COLUMNS)
+
+
+def details_table(evaluation: Evaluation) -> str:
+    """Localisation, set distances and durations, in the lines of `scores_table`."""
+    return _table(evaluation, DETAILS)
+
+
+def _table(evaluation: Evaluation, columns: Sequence[tuple[str, Callable[[Scores], str]]]) -> str:
     rows: list[tuple[str, Scores]] = list(evaluation.sequences.items())
     if len(rows) > 1:
         rows.append(("OVERALL", evaluation.overall))
     rows += [(f"class {label}", scores) for label, scores in evaluation.classes.items()]
-    table = [["sequence", *(heading for heading, _ in COLUMNS)]]
-    table += [[name, *(cell(scores) for _, cell in COLUMNS)] for name, scores in rows]
+    table = [["sequence", *(heading for heading, _ in columns)]]
+    table += [[name, *(cell(scores) for _, cell in columns)] for name, scores in rows]
     widths = [max(len(line[k]) for line in table) for k in range(len(table[0]))]
     lines = []
     for line in table:
@@ -53,6 +87,15 @@ def scores_table(evaluation: Evaluation) -> str:
         lines.append("  ".join((first, *rest)).rstrip())
     lines.insert(1, "-" * max(len(line) for line in lines))
     return "\n".join(lines)
+
+
+def _number(value: float | None) -> str:
+    return "-" if value is None else f"{value:.4g}"
+
+
+def _lasting(scores: Scores, name: str) -> str:
+    values = scores.durations.values[name]
+    return f"{np.median(values):g} ({values.max()})" if len(values) else "-"
 
 
 def _percent(value: float | None) -> str:
