@@ -3,7 +3,9 @@
 Baseline: one filterpy object a track, numpy IoU, scipy's dense assignment. Both see the same
 frames in turn, so a noisy machine slows both. Prints ratios; what is not faster is printed too.
 
-    python scripts/benchmark_engine.py --objects 1 10 100 1000
+Then the engine alone as scenes grow at constant density.
+
+    python scripts/benchmark_engine.py --objects 1 10 100 1000 --growth 100 10000
 """
 
 from __future__ import annotations
@@ -102,10 +104,22 @@ def measure(objects: int, frames: int, rounds: int = 3) -> tuple[float, float]:
     return float(np.median(seconds[0])), float(np.median(seconds[1]))
 
 
+def growth(objects: int, frames: int = 12) -> float:
+    """Median seconds an object and frame of the engine alone."""
+    engine = Engine(Settings())
+    seconds = []
+    for frame in scene(objects, frames):
+        start = time.perf_counter()
+        engine.step(frame)
+        seconds.append(time.perf_counter() - start)
+    return float(np.median(seconds[frames // 3 :])) / objects
+
+
 def main() -> None:
     parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
     parser.add_argument("--objects", type=int, nargs="+", default=[1, 10, 100, 1000])
     parser.add_argument("--frames", type=int, default=90)
+    parser.add_argument("--growth", type=int, nargs="+", default=[100, 1000, 10_000, 100_000])
     options = parser.parse_args()
     packages = [f"{name} {version(name)}" for name in ("numpy", "numba", "scipy", "filterpy")]
     print(f"{platform.machine()}, Python {platform.python_version()}, {', '.join(packages)}")
@@ -114,6 +128,9 @@ def main() -> None:
     for objects in options.objects:
         baseline, engine = measure(objects, options.frames)
         print(f"{objects:8d} {1e3 * baseline:12.3f} {1e3 * engine:10.3f} {baseline / engine:7.1f}")
+    print("engine alone at constant density")
+    for objects in options.growth:
+        print(f"{objects:8d} {1e6 * growth(objects):12.3f} us an object")
 
 
 if __name__ == "__main__":
