@@ -79,6 +79,9 @@ def test_details(capsys):
         "gaps", "recovery", "lost",
     ]  # fmt: skip
     assert second[2].startswith("test ")
+    third = out.split("\n\n")[2].splitlines()
+    assert third[0].split() == ["similarity", "HOTA", "DetA", "AssA", "LocA"]
+    assert [line.split()[0] for line in third[1:20]] == [f"{k / 20:.2f}" for k in range(1, 20)]
     assert "GOSPA and OSPA" in err
 
 
@@ -117,3 +120,20 @@ def test_wrong_use(words, sentence, capsys, pair):
     err = capsys.readouterr().err
     assert sentence in err
     assert "Traceback" not in err
+
+
+def test_consistency(capsys, tmp_path):
+    words = ["associate", WORDS[0], "--drop-identities", "--frame-rate-hz", "25"]
+    assert run([*words, "--out", str(tmp_path / "run")]) == 0
+    capsys.readouterr()
+    words = ["evaluate", str(tmp_path / "run"), *WORDS[1:], "--consistency"]
+    assert run(words) == 0
+    out = capsys.readouterr().out
+    assert "NEES" in out
+    assert "NIS" in out
+    assert run([*words, "--json"]) == 0
+    found = json.loads(capsys.readouterr().out)
+    (checks,) = found["consistency"].values()
+    assert set(checks) == {"nees", "nis"}
+    assert run(["evaluate", *WORDS, "--consistency"]) == 2
+    assert "--consistency needs run folders" in capsys.readouterr().err

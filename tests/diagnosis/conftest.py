@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from tests.diagnosis.runs import CROSSING, crossing, made_log, made_run, shipped_log
+from tests.diagnosis.runs import CROSSING, PINNED, crossing, made_log, made_run, shipped_log
 
 
 @pytest.fixture(scope="session")
@@ -36,10 +36,13 @@ def campus_runs(tmp_path_factory):
     """One shipped sequence at both levels of the ledger."""
     folder = tmp_path_factory.mktemp("campus")
     log = shipped_log("TUD-Campus")
-    return {level: made_run(folder / level, log, level=level) for level in ("full", "contested")}
+    return {
+        level: made_run(folder / level, log, *PINNED, level=level)
+        for level in ("full", "contested")
+    }
 
 
 @pytest.fixture(scope="session")
 def stadtmitte_run(tmp_path_factory):
     folder = tmp_path_factory.mktemp("stadtmitte") / "run"
-    return made_run(folder, shipped_log("TUD-Stadtmitte"), level="contested")
+    return made_run(folder, shipped_log("TUD-Stadtmitte"), *PINNED, level="contested")

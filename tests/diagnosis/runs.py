@@ -76,6 +76,27 @@ CROSSING = (
 )
 
 
+# Settings under which the shipped sequences have the switches that are asked about, whatever the
+# defaults become.
+PINNED = (
+    "sensor.detection_probability=0.9",
+    "motion.acceleration_noise=5.0",
+    "motion.size_noise=0.5",
+    "motion.initial_speed_sigma=2.0",
+    "motion.initial_size_rate_sigma=0.2",
+    "measurement.position_sigma=0.05",
+    "measurement.size_sigma=0.1",
+    "gate.probability=0.999",
+    "gate.overlap_floor=0.0",
+    'cost.terms=["overlap"]',
+    "cost.overlap.nats=8.0",
+    "cost.overlap.neutral=0.5",
+    "lifecycle.confirm_hits=2",
+    "lifecycle.confirm_window=3",
+    "lifecycle.coast_seconds=1.5",
+)
+
+
 def shipped_log(name):
     """A sequence of the registry package motmetrics, identities dropped, at its 25 frames a s."""
     return read_log(SHIPPED / name / "test.txt", drop_identities=True, frame_rate_hz=25.0)

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from math import sqrt
 
+import numpy as np
 import pytest
+from scipy.optimize import linear_sum_assignment
 
 from tests.evaluation.made import make_tracks, make_truth, random_scene, standing
 from tests.log.files import SHIPPED
@@ -91,3 +94,46 @@ def test_hota_is_the_geometric_mean_at_each_threshold(seed):
     for row in evaluate(tracks, truth).hota_counts.by_threshold().values():
         assert row["hota"] == pytest.approx(sqrt(row["deta"] * row["assa"]))
         assert row["loca"] is None or 0 < row["loca"] <= 1
+
+
+def by_the_formulas(track_file, truth_file, alpha):
+    """HOTA, DetA, AssA, LocA of benchmark text files by numpy and scipy, dense and slow."""
+    rows = [np.loadtxt(path, delimiter=",")[:, :6] for path in (truth_file, track_file)]
+    pairs = []  # frame, object, track, similarity
+    for frame in np.unique(rows[0][:, 0]):
+        for a in rows[0][rows[0][:, 0] == frame]:
+            for b in rows[1][rows[1][:, 0] == frame]:
+                low, high = np.maximum(a[2:4], b[2:4]), np.minimum(a[2:4] + a[4:], b[2:4] + b[4:])
+                shared = np.prod(np.clip(high - low, 0, None))
+                iou = shared / (a[4] * a[5] + b[4] * b[5] - shared)
+                if iou >= alpha:
+                    pairs.append((frame, a[1], b[1], iou))
+    size = [Counter(table[:, 1]) for table in rows]
+
+    def accuracy(count, couple):
+        return count[couple] / (size[0][couple[0]] + size[1][couple[1]] - count[couple])
+
+    possible = Counter((a, b) for _, a, b, _ in pairs)
+    hits = []
+    for frame in {pair[0] for pair in pairs}:
+        here = [pair for pair in pairs if pair[0] == frame]
+        objects, tracks = (sorted({pair[k] for pair in here}) for k in (1, 2))
+        weight = np.zeros((len(objects), len(tracks)))
+        for _, a, b, iou in here:
+            weight[objects.index(a), tracks.index(b)] = (
+                1e5 + accuracy(possible, (a, b)) + 1e-5 * iou
+            )
+        for i, j in zip(*linear_sum_assignment(weight, maximize=True), strict=True):
+            hits += [pair for pair in here if pair[1:3] == (objects[i], tracks[j])]
+    found = Counter((a, b) for _, a, b, _ in hits)
+    association = sum(accuracy(found, (a, b)) for _, a, b, _ in hits)
+    union = len(rows[0]) + len(rows[1]) - len(hits)
+    loca = sum(pair[3] for pair in hits) / len(hits)
+    return sqrt(association / union), len(hits) / union, association / len(hits), loca
+
+
+@pytest.mark.parametrize("alpha", [0.05, 0.25, 0.3, 0.5, 0.75])
+def test_a_real_sequence_against_the_formulas(alpha):
+    files = SHIPPED / "TUD-Campus" / "test.txt", SHIPPED / "TUD-Campus" / "gt.txt"
+    scores = evaluate(read_track_file(files[0]), read_truth(files[1]))
+    assert hota(scores, f"{alpha:.2f}") == pytest.approx(by_the_formulas(*files, alpha), abs=1e-9)

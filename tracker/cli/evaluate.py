@@ -74,8 +74,15 @@ def evaluate(
     details: Annotated[
         bool,
         typer.Option(
-            help="A second table: localisation, GOSPA and OSPA, and how long tracks, delays, gaps "
-            "and lost identities last. --json has these always, and HOTA at each threshold."
+            help="More tables: localisation, GOSPA and OSPA, how long tracks, delays, gaps and "
+            "lost identities last, and HOTA at each threshold. --json has these always."
+        ),
+    ] = False,
+    consistency: Annotated[
+        bool,
+        typer.Option(
+            help="Run folders: are the covariances honest? NEES of paired rows against truth and "
+            "NIS of the ledger's pairs, with chi-square bounds."
         ),
     ] = False,
     coasting: Annotated[
@@ -131,8 +138,9 @@ def evaluate(
     margent evaluate runs --truth sample_sequences --limit "idf1>=0.72" --junit scores.xml
     """
     from tracker.cli.progress import watched
-    from tracker.cli.sequences import tracks_by_name, truths_by_name
+    from tracker.cli.sequences import sources_by_name, truths_by_name
     from tracker.evaluation import Scope, evaluate_all
+    from tracker.evaluation.consistency import check_run, checks_table
     from tracker.evaluation.junit import write_junit
     from tracker.evaluation.limits import judge, parse_limit, read_limits, verdict_table
     from tracker.evaluation.table import (
@@ -141,8 +149,10 @@ def evaluate(
         LEGEND,
         details_table,
         scores_table,
+        thresholds_table,
     )
     from tracker.kernels import compiled_before
+    from tracker.results import is_run
 
     counted = {"as-reported": None, "yes": True, "no": False}
     if coasting not in counted:
@@ -161,7 +171,12 @@ def evaluate(
     asked = [parse_limit(text) for text in limit or ()]
     if junit is not None and not asked and limits is None:
         raise UsageError("--junit reports limits: give --limit or --limits")
-    sequences = tracks_by_name(tracks)
+    sources = sources_by_name(tracks)
+    sequences = {name: found for name, (_, found) in sources.items()}
+    if consistency:
+        for path, _ in sources.values():
+            if not is_run(path):
+                raise UsageError(f"--consistency needs run folders, and {path} is a track file")
     if limits is not None:
         asked += read_limits(limits, list(sequences))
     truths = truths_by_name(truth, list(sequences))
@@ -185,14 +200,29 @@ def evaluate(
                 "those of this truth?",
                 err=True,
             )
+    honest = (
+        {name: check_run(sources[name][0], truths[name], scopes[name]) for name in truths}
+        if consistency
+        else {}
+    )
     verdicts = judge(found, asked)
     if json_:
-        verdict_part = {"limits": [verdict.as_dict() for verdict in verdicts]} if asked else {}
-        typer.echo(json.dumps(found.as_dict() | verdict_part, indent=2))
+        answer = found.as_dict()
+        if consistency:
+            answer["consistency"] = {
+                name: {kind: check.as_dict() for kind, check in checks.items()}
+                for name, checks in honest.items()
+            }
+        if asked:
+            answer["limits"] = [verdict.as_dict() for verdict in verdicts]
+        typer.echo(json.dumps(answer, indent=2))
     else:
         typer.echo(scores_table(found))
         if details:
             typer.echo("\n" + details_table(found))
+            typer.echo("\n" + thresholds_table(found))
+        if consistency:
+            typer.echo("\n" + checks_table(honest))
         if asked:
             typer.echo("\n" + verdict_table(verdicts))
         typer.echo(LEGEND, err=True)

@@ -14,6 +14,11 @@ if TYPE_CHECKING:
 
 def tracks_by_name(paths: list[Path]) -> dict[str, Tracks]:
     """Tracks by sequence name, in the order given."""
+    return {name: tracks for name, (_, tracks) in sources_by_name(paths).items()}
+
+
+def sources_by_name(paths: list[Path]) -> dict[str, tuple[Path, Tracks]]:
+    """Run folder or file, and its tracks, by sequence name, in the order given."""
     from tracker.log import read_track_file
     from tracker.results import is_run, read_run
 
@@ -30,7 +35,7 @@ def tracks_by_name(paths: list[Path]) -> dict[str, Tracks]:
                 )
         read += [(run, read_run(run) if is_run(run) else read_track_file(run)) for run in runs]
     names = _names([(path, tracks.name) for path, tracks in read])
-    return dict(zip(names, (tracks for _, tracks in read), strict=True))
+    return dict(zip(names, read, strict=True))
 
 
 def _names(named: list[tuple[Path, str]]) -> list[str]:

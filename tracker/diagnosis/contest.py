@@ -20,6 +20,7 @@ from tracker.association.rule import association_rules
 from tracker.association.terms import TERMS, registered_costs
 from tracker.diagnosis.explanation import Change
 from tracker.diagnosis.frame_record import FrameRecord
+from tracker.errors import InputError
 from tracker.kernels.assignment import Problem
 from tracker.kernels.gate import GATE_OK, gate_candidates
 from tracker.kernels.solve import solve
@@ -211,6 +212,8 @@ def _found_again(
 
     chosen : rows of the chosen pairs. If their costs do not come out as recorded, the costs of the
     others are not believed.
+
+    Raises InputError if they are not even candidates.
     """
     rule, rows = rules.tiers[tier], record.decisions
     at = np.searchsorted(record.track, tracks)
@@ -230,10 +233,16 @@ def _found_again(
     assert status == GATE_OK, "the run gated these before"
     row = np.repeat(np.arange(len(tracks)), np.diff(candidates.start))
     column = candidates.column.copy()
-    mine = [
-        int(np.flatnonzero((row == i) & (column == held[i]))[0])
+    own = [
+        np.flatnonzero((row == i) & (column == held[i]))
         for i in np.searchsorted(tracks, rows.track[chosen])
     ]
+    if not all(map(len, own)):
+        raise InputError(
+            f"frame {record.number} has chosen pairs outside the gate that settings.toml sets",
+            remedy="The files of the run folder do not belong together; associate again.",
+        )
+    mine = [int(found[0]) for found in own]
     cost = np.full(len(row), np.nan)
     terms = {name: np.full(len(row), np.nan) for name in rows.terms}
     if rules.repeatable[tier]:

@@ -245,8 +245,8 @@ def _notes(inquiry: Inquiry, decisions: list[Decision], answers: list[WhyNot]) -
     if any(decision.component_tracks and not decision.complete for decision in decisions):
         notes.append(
             "Costs of candidates marked * cannot be worked out: the run's cost has terms other "
-            f"than {', '.join(GEOMETRIC_TERMS)}. Run 'margent associate' again with --set "
-            "ledger.level=full to have them recorded."
+            f"than {', '.join(GEOMETRIC_TERMS)}, or its settings.toml was changed. Run 'margent "
+            "associate' again with --set ledger.level=full to have them recorded."
         )
     if settings.association.mode == "joint-probabilistic":
         notes.append(

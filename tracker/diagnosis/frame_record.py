@@ -93,7 +93,22 @@ class FrameRecord:
 
 
 def read_frame(ledger: RunLedger, frame: int) -> FrameRecord:
-    """Read one frame. Raises InputError, saying which frames there are, if it is not in the run."""
+    """Read one frame.
+
+    Raises InputError for a frame that is not in the run, saying which are, and for a ledger that
+    lacks a column.
+    """
+    try:
+        return _read_frame(ledger, frame)
+    except KeyError as error:
+        raise InputError(
+            f"has a ledger of another version: {error.args[0]}",
+            path=ledger.folder,
+            remedy="Run 'margent associate' again.",
+        ) from None
+
+
+def _read_frame(ledger: RunLedger, frame: int) -> FrameRecord:
     predictions = ledger.rows("predictions", frame, frame)
     detections = ledger.rows("detections", frame, frame)
     if not len(predictions) and not len(detections):
@@ -199,7 +214,8 @@ def _stacked(table: pa.Table, names: list[str] | tuple[str, ...]) -> Floats:
 
 def _squares(column: pa.ChunkedArray, count: int, dimension: int) -> Floats:
     """(k, d, d) from upper triangles row by row."""
-    upper = column.combine_chunks().flatten().to_numpy().reshape(count, -1)
+    entries = dimension * (dimension + 1) // 2
+    upper = column.combine_chunks().flatten().to_numpy().reshape(count, entries)
     square = np.zeros((count, dimension, dimension))
     row, other = np.triu_indices(dimension)
     square[:, row, other] = upper

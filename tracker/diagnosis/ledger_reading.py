@@ -21,6 +21,7 @@ from tracker.errors import InputError
 from tracker.ledger import filter_names
 from tracker.log.model import Kind
 from tracker.results.read import read_facts
+from tracker.results.write import EVENT_COLUMNS
 from tracker.settings import load_settings
 
 # Every frame with a live track or a detection has a row in one of these.
@@ -138,11 +139,8 @@ class RunLedger:
             table = table.filter(pc.field("track") == track)
         if frame is not None:
             table = table.filter(pc.field("frame") == frame)
-        names = ("frame", "time", "track", "from", "to", "reason")
-        return [
-            Event(*values)
-            for values in zip(*(table[name].to_pylist() for name in names), strict=True)
-        ]
+        columns = [table[name].to_pylist() for name in EVENT_COLUMNS]
+        return [Event(*values) for values in zip(*columns, strict=True)]
 
     @cached_property
     def _all_events(self) -> pa.Table:
@@ -158,7 +156,7 @@ class RunLedger:
             null_values=[""],
         )
         with _named(path):
-            return pa.csv.read_csv(path, convert_options=options)
+            return pa.csv.read_csv(path, convert_options=options).select(EVENT_COLUMNS)
 
     def _read(self, name: str, wanted: pc.Expression, columns: list[str] | None) -> pa.Table:
         path = self._path(name)

@@ -229,7 +229,7 @@ def _track(told: Explanation) -> str:
     if view.confidence is not None:
         said.append(f"  identity confidence after it {view.confidence:.3f}")
     said.append(f"  afterwards: {view.afterwards}")
-    return "\n".join(said)
+    return "\n".join(map(_wrapped, said))
 
 
 def _track_of_detection(told: Explanation) -> int | None:

@@ -3,35 +3,30 @@
 from __future__ import annotations
 
 import numpy as np
-from scipy.sparse import csr_array
-from scipy.sparse.csgraph import min_weight_full_bipartite_matching
 
 from tracker.evaluation.couples import Couples
+from tracker.kernels.matching import cheapest_matching
 from tracker.log.model import Ints
 
 
 def own_tracks(couples: Couples, shared: Ints, objects: int) -> tuple[Ints, int]:
     """The track of each object, so that the most rows agree.
 
-    shared : (C,) frames in which each couple of object and track is close enough.
+    couples : sorted by object, then track.   shared : (C,) frames in which each couple is close
+    enough.
 
-    Returns (O,) tracks, -1 for none, and IDTP: the rows that agree.
+    Returns (O,) tracks, -1 for none, and IDTP: the rows that agree. The matching is exact (sums
+    are whole numbers); an object or a track may go without.
     """
+    good = np.flatnonzero(shared > 0)
+    track = couples.track[good]
+    start = np.searchsorted(couples.object[good], np.arange(objects + 1))
+    # Making a couple is worth as many rows as it shares: `most` minus what that falls short of.
+    most = float(shared.max(initial=0)) + 1.0
+    short = np.array(most - shared[good], np.float64)
+    tracks = int(track.max(initial=-1)) + 1
+    chosen, _ = cheapest_matching(start, track, short, tracks, most, -1.0)
     own_track = np.full(objects, -1, np.int64)
-    good = shared > 0
-    shared = shared[good]
-    if not len(shared):
-        return own_track, 0
-    # Every object may also go without a track, in a column of its own; weights are positive
-    # because scipy's sparse solver drops zeros, and whole, so that sums are exact.
-    most = int(shared.max()) + 1
-    tracks = int(couples.track.max()) + 1
-    own = np.arange(objects)
-    weights = np.concatenate((most - shared, np.full(objects, most))).astype(np.float64)
-    rows = np.concatenate((couples.object[good], own))
-    columns = np.concatenate((couples.track[good], tracks + own))
-    table = csr_array((weights, (rows, columns)), shape=(objects, tracks + objects))
-    row, column = min_weight_full_bipartite_matching(table)
-    found = column < tracks
-    own_track[row[found]] = column[found]
-    return own_track, int(objects * most - round(float(table[row, column].sum())))
+    found = chosen >= 0
+    own_track[found] = track[chosen[found]]
+    return own_track, int(shared[good][chosen[found]].sum())

@@ -7,6 +7,7 @@ from collections.abc import Callable, Sequence
 import numpy as np
 
 from tracker.evaluation.evaluate import Evaluation
+from tracker.evaluation.hota import ACCURACIES
 from tracker.evaluation.scores import Scores
 
 CAUTION = (
@@ -70,6 +71,15 @@ def scores_table(evaluation: Evaluation) -> str:
 def details_table(evaluation: Evaluation) -> str:
     """Localisation, set distances and durations, in the lines of `scores_table`."""
     return _table(evaluation, DETAILS)
+
+
+def thresholds_table(evaluation: Evaluation) -> str:
+    """HOTA and its parts at each threshold, over all sequences."""
+    lines = ["similarity   HOTA   DetA   AssA   LocA"]
+    for threshold, found in evaluation.overall.hota_counts.by_threshold().items():
+        cells = "  ".join(_percent(found[name]).rjust(5) for name in ACCURACIES)
+        lines.append(f"{threshold:>10}  {cells}")
+    return "\n".join(lines)
 
 
 def _table(evaluation: Evaluation, columns: Sequence[tuple[str, Callable[[Scores], str]]]) -> str:
