@@ -1,5 +1,6 @@
 """Why an identity broke: every error of a run traced to one cause and one setting."""
 
+from tracker.causes.again import with_ledger
 from tracker.causes.diagnose import Diagnosis, diagnose
 from tracker.causes.model import SETTING, Cause, Error, Finding
 from tracker.causes.summary import summary_dict, summary_text, write_causes
@@ -13,5 +14,6 @@ __all__ = [
     "diagnose",
     "summary_dict",
     "summary_text",
+    "with_ledger",
     "write_causes",
 ]

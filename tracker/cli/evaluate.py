@@ -12,8 +12,10 @@ import typer
 from tracker.errors import LimitError, UsageError
 
 if TYPE_CHECKING:
+    from tracker.causes import Diagnosis
     from tracker.evaluation import Scope
     from tracker.log.model import Truth
+    from tracker.results.tracks import Tracks
 
 
 def evaluate(
@@ -85,6 +87,20 @@ def evaluate(
             "NIS of the ledger's pairs, with chi-square bounds."
         ),
     ] = False,
+    causes: Annotated[
+        bool,
+        typer.Option(
+            help="Run folders: trace every switch, break, miss, late confirmation and false track "
+            "to its cause, print a summary and write causes.csv into the run folder."
+        ),
+    ] = False,
+    log: Annotated[
+        list[Path] | None,
+        typer.Option(
+            help="For --causes of runs without a ledger: the detection logs they were made from, "
+            "in their order; they are run again with a ledger. Repeatable."
+        ),
+    ] = None,
     coasting: Annotated[
         str, typer.Option(help="Count coasting rows: 'as-reported', 'yes' or 'no'.")
     ] = "as-reported",
@@ -173,10 +189,10 @@ def evaluate(
         raise UsageError("--junit reports limits: give --limit or --limits")
     sources = sources_by_name(tracks)
     sequences = {name: found for name, (_, found) in sources.items()}
-    if consistency:
+    for flag, asked_for in (("--consistency", consistency), ("--causes", causes)):
         for path, _ in sources.values():
-            if not is_run(path):
-                raise UsageError(f"--consistency needs run folders, and {path} is a track file")
+            if asked_for and not is_run(path):
+                raise UsageError(f"{flag} needs run folders, and {path} is a track file")
     if limits is not None:
         asked += read_limits(limits, list(sequences))
     truths = truths_by_name(truth, list(sequences))
@@ -205,6 +221,7 @@ def evaluate(
         if consistency
         else {}
     )
+    traced = _trace(sources, truths, scopes, log) if causes else {}
     verdicts = judge(found, asked)
     if json_:
         answer = found.as_dict()
@@ -213,6 +230,10 @@ def evaluate(
                 name: {kind: check.as_dict() for kind, check in checks.items()}
                 for name, checks in honest.items()
             }
+        if causes:
+            from tracker.causes import summary_dict
+
+            answer["causes"] = {name: summary_dict(item) for name, item in traced.items()}
         if asked:
             answer["limits"] = [verdict.as_dict() for verdict in verdicts]
         typer.echo(json.dumps(answer, indent=2))
@@ -223,6 +244,10 @@ def evaluate(
             typer.echo("\n" + thresholds_table(found))
         if consistency:
             typer.echo("\n" + checks_table(honest))
+        for item in traced.values():
+            from tracker.causes import summary_text
+
+            typer.echo("\n" + summary_text(item))
         if asked:
             typer.echo("\n" + verdict_table(verdicts))
         typer.echo(LEGEND, err=True)
@@ -239,6 +264,25 @@ def evaluate(
             f"{len(missed)} of {len(verdicts)} limits not met, the first: {first.where}, "
             f"{first.limit.words} (found {value})"
         )
+
+
+def _trace(
+    sources: dict[str, tuple[Path, Tracks]],
+    truths: dict[str, Truth],
+    scopes: dict[str, Scope],
+    logs: list[Path] | None,
+) -> dict[str, Diagnosis]:
+    """Diagnose every run and write its causes.csv."""
+    from tracker.causes import diagnose, with_ledger, write_causes
+
+    if logs is not None and len(logs) != len(sources):
+        raise UsageError(f"{len(sources)} runs but {len(logs)} logs; give one each, in order")
+    found = {}
+    for k, (name, (path, _)) in enumerate(sources.items()):
+        with with_ledger(path, logs[k] if logs else None) as folder:
+            found[name] = diagnose(folder, truths[name], scopes[name])
+        write_causes(found[name], path / "causes.csv")
+    return found
 
 
 def _with_regions(scope: Scope, names: list[str], given: list[str]) -> dict[str, Scope]:
