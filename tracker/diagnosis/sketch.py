@@ -21,6 +21,7 @@ INK = "#000000"
 FAINT = "#8C8C8C"
 
 ROOM = 0.14  # of the region, around it
+CONTEXT_NAMED = 8  # things that are not spoken of are named if there are no more
 BEST = 4  # alternatives of a decision that the picture is zoomed to
 
 
@@ -117,25 +118,40 @@ class Sketch:
         return low - room, high + room
 
     def labels(self, low: Floats, high: Floats) -> Iterator[Label]:
-        """Names at boxes and points, costs at links; those of context only between two corners."""
-        for track, view in sorted(self.tracks.items()):
-            near = track in self.near_tracks
-            if near or _inside(view.position, low, high):
-                text = self._track_text(view) if near else f"track {track}"
-                x, y = extent(view.position)[:2] if self.boxes else _point(view.position)
-                yield self._label(text, x, y, (-0.4, 1.0), self.colours.get(track, FAINT))
-        for number, seen in sorted(self.detections.items()):
-            near = number in self.near_detections
-            if near or _inside(seen.position, low, high):
-                text = self._detection_text(seen) if near else f"detection {number}"
-                x, y = extent(seen.position)[2:] if self.boxes else _point(seen.position)
-                yield self._label(text, x, y, (0.4, -1.0), INK if near else FAINT)
+        """Names at boxes and points, costs at links; then context between corners, if little."""
+        for track in sorted(self.colours):
+            view = self.tracks[track]
+            yield self._name(self._track_text(view), view, self.colours[track])
+        for number in sorted(self.near_detections):
+            seen = self.detections[number]
+            yield self._name(self._detection_text(seen), seen, INK)
         for link in self.links:
             if link.text and link.track in self.colours:
                 (x0, y0), (x1, y1) = self.ends(link)
                 aside = (self.upwards * (y1 - y0), x1 - x0)
                 middle = 0.5 * (x0 + x1), 0.5 * (y0 + y1)
                 yield self._label(link.text, *middle, aside, self.colours[link.track])
+        context: list[tuple[str, TrackView | DetectionView]] = [
+            (f"track {track}", view)
+            for track, view in sorted(self.tracks.items())
+            if track not in self.near_tracks and _inside(view.position, low, high)
+        ]
+        context += [
+            (f"detection {number}", seen)
+            for number, seen in sorted(self.detections.items())
+            if number not in self.near_detections and _inside(seen.position, low, high)
+        ]
+        if len(context) <= CONTEXT_NAMED:
+            yield from (self._name(text, item, FAINT) for text, item in context)
+
+    def _name(self, text: str, item: TrackView | DetectionView, colour: str) -> Label:
+        """The label of a track, above its box, or of a detection, below it."""
+        x, y = _point(item.position)
+        upper = isinstance(item, TrackView)
+        if self.boxes:
+            left, top, right, bottom = extent(item.position)
+            x, y = (left, top) if upper else (right, bottom)
+        return self._label(text, x, y, (-0.4, 1.0) if upper else (0.4, -1.0), colour)
 
     def _label(
         self, text: str, x: float, y: float, side: tuple[float, float], colour: str

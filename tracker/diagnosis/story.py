@@ -19,6 +19,8 @@ from tracker.diagnosis.words import changes_words, detection_name, gate_words, n
 
 EMPTY = "–"
 LINE_LENGTH = 100
+SHOWN_OPTIONS = 12  # of a decision, the best ones
+SHOWN_OTHERS = 12  # other tracks
 
 
 def tell(told: Explanation) -> str:
@@ -119,7 +121,7 @@ def _options(item: Decision) -> str:
     head = ["", "cost", *(terms if len(terms) > 1 else []), "d²", *(["IoU"] if boxes else [])]
     rows = [[*head, "worse by", "odds", ""]]
     by_track = _seen_from_track(item)
-    for option in item.alternatives:
+    for option in item.alternatives[:SHOWN_OPTIONS]:
         gate = option.gate
         row = [_option_name(option, by_track), nats(option.cost)]
         if len(terms) > 1:
@@ -134,8 +136,13 @@ def _options(item: Decision) -> str:
     )
     return (
         f"What could have been decided (tier '{item.tier_name}', {scope} decided together; costs "
-        "in nats):\n" + _aligned(rows, left={0, len(rows[0]) - 1})
+        "in nats):\n" + _aligned(rows, left={0, len(rows[0]) - 1}) + _and_more(item)
     )
+
+
+def _and_more(item: Decision) -> str:
+    left = len(item.alternatives) - SHOWN_OPTIONS
+    return f"\n  … and {left} more, none better (all are in --json)" if left > 0 else ""
 
 
 def _seen_from_track(item: Decision) -> bool:
@@ -266,12 +273,19 @@ def _moment(item: Moment, now: bool) -> list[str]:
 
 
 def _others(told: Explanation) -> str:
+    """What became of the other tracks: those in the runner-up and 'why not' first."""
     subject = told.track if told.track is not None else _track_of_detection(told)
-    lines = []
-    for view in told.tracks:
-        if view.track == subject:
-            continue
-        lines.append(_wrapped(f"  track {view.track}: {_fate(told, view)}"))
+    options = [item.runner_up for item in told.decisions]
+    options += [answer.alternative for answer in told.why_not]
+    involved = {answer.track for answer in told.why_not}
+    for option in options:
+        if option is not None:
+            involved |= {change.track for change in option.changes if change.track is not None}
+    views = [view for view in told.tracks if view.track != subject]
+    views.sort(key=lambda view: (view.track not in involved, view.track))
+    lines = [_wrapped(f"  track {v.track}: {_fate(told, v)}") for v in views[:SHOWN_OTHERS]]
+    if len(views) > SHOWN_OTHERS:
+        lines.append(f"  … and {len(views) - SHOWN_OTHERS} more (in --json)")
     return "The other tracks named:\n" + "\n".join(lines) if lines else ""
 
 
