@@ -10,6 +10,8 @@ from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from tracker.association import CandidatePairs, k_best, marginals, register_cost
+    from tracker.causes import diagnose
+    from tracker.diagnosis import explain
     from tracker.engine import Engine, FrameResult
     from tracker.errors import MargentError
     from tracker.evaluation import evaluate
@@ -33,7 +35,9 @@ _HOME = {
     "Tracks": "tracker.results",
     "Truth": "tracker.log",
     "associate_log": "tracker.offline",
+    "diagnose": "tracker.causes",
     "evaluate": "tracker.evaluation",
+    "explain": "tracker.diagnosis",
     "k_best": "tracker.association",
     "load_settings": "tracker.settings",
     "marginals": "tracker.association",
@@ -57,7 +61,9 @@ __all__ = [
     "Tracks",
     "Truth",
     "associate_log",
+    "diagnose",
     "evaluate",
+    "explain",
     "k_best",
     "load_settings",
     "marginals",

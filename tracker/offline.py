@@ -15,7 +15,7 @@ import numpy as np
 from tracker.engine import Engine, FrameResult
 from tracker.log.model import DetectionLog, Frame
 from tracker.results.folder import atomic_folder
-from tracker.results.recorder import Recorder, TrackRows
+from tracker.results.recorder import Recorder, TrackRows, no_rows
 from tracker.results.tracks import Tracks
 from tracker.results.write import RunWriter, write_json
 from tracker.settings import Settings
@@ -109,7 +109,7 @@ def track_log(log: DetectionLog, settings: Settings | None = None) -> Tracks:
     for frame in frames_of(used, settings):
         parts += recorder.add(frame, engine.step(frame))
     parts += recorder.finish()
-    rows = TrackRows.join(parts)
+    rows = TrackRows.join(parts) if parts else no_rows(log.kind)
     return Tracks(
         name=log.name,
         kind=log.kind,

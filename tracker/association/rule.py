@@ -14,6 +14,9 @@ from tracker.log.model import Kind
 from tracker.results.tracks import TrackState
 from tracker.settings.schema import CostSettings, Settings, TierSettings
 
+# IoU below which boxes are no candidates where nothing but overlap is costed.
+HARDLY_TOUCHING = 0.05
+
 
 @dataclass(frozen=True, slots=True)
 class AssociationRule:
@@ -61,7 +64,11 @@ def _rule(settings: Settings, tier: TierSettings, kind: Kind, where: str) -> Ass
     gate_path = f"{where}.gate" if tier.gate else "gate"
     cost_path = f"{where}.cost" if tier.cost else "cost"
     boxes = kind is Kind.BOX
-    if gate.overlap_floor > 0.0 and not boxes:
+    terms = tuple(_resolve_term(term, kind, cost.new_density) for term in cost.terms)
+    floor = gate.overlap_floor
+    if floor is None:
+        floor = HARDLY_TOUCHING if boxes and terms == ("overlap",) else 0.0
+    if floor > 0.0 and not boxes:
         raise SettingsError(
             "an overlap floor needs boxes, these are points; set it to 0",
             setting=f"{gate_path}.overlap_floor",
@@ -69,13 +76,12 @@ def _rule(settings: Settings, tier: TierSettings, kind: Kind, where: str) -> Ass
     threshold = math.inf
     if gate.probability is not None:
         threshold = gate_threshold(gate.probability, kind.dimension)
-    elif gate.overlap_floor == 0.0:
+    elif floor == 0.0:
         raise SettingsError(
             "there is no gate at all; set a probability"
             + (" or gate.overlap_floor" if boxes else ""),
             setting=f"{gate_path}.probability",
         )
-    terms = tuple(_resolve_term(term, kind, cost.new_density) for term in cost.terms)
     for term in terms:
         if term not in TERMS and term not in registered_costs():
             raise SettingsError(
@@ -107,7 +113,7 @@ def _rule(settings: Settings, tier: TierSettings, kind: Kind, where: str) -> Ass
         boxes=boxes,
         dimension=kind.dimension,
         threshold=threshold,
-        overlap_floor=gate.overlap_floor,
+        overlap_floor=floor,
         candidate_limit=gate.candidate_limit,
         terms=terms,
         cost=cost,

@@ -118,6 +118,7 @@ def split(line: str, delimiter: str) -> list[str]:
 
 
 def is_number(cell: str) -> bool:
+    """Whether a cell reads as a number."""
     try:
         float(cell)
     except ValueError:

@@ -44,6 +44,8 @@ class Spread:
 
 @dataclass(frozen=True, slots=True)
 class Scores:
+    """Quantiles and histogram of the detections' scores."""
+
     spread: Spread
     edges: tuple[float, ...]
     counts: tuple[int, ...]
@@ -67,6 +69,8 @@ class NearDuplicates:
 
 @dataclass(frozen=True, slots=True)
 class RejectionCount:
+    """How many rows one reason would reject, and the first of them."""
+
     column: str
     reason: str
     count: int

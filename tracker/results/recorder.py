@@ -50,6 +50,28 @@ class TrackRows:
         )
 
 
+def no_rows(kind: Kind) -> TrackRows:
+    """Rows of no track at all."""
+    d = kind.dimension
+    place = np.empty((0, d))
+    whole, real = np.empty(0, np.int64), np.empty(0)
+    return TrackRows(
+        frame=whole,
+        time=real,
+        track=whole,
+        z=place,
+        estimate=place,
+        rate=place,
+        covariance=np.empty((0, d * (d + 1) // 2)),
+        score=real,
+        label=np.empty(0, np.int32),
+        confidence=real,
+        state=np.empty(0, np.int8),
+        reported=np.empty(0, np.bool_),
+        line=whole,
+    )
+
+
 class Recorder:
     """Collects frame results and yields finished rows."""
 

@@ -18,7 +18,7 @@ from tracker.ledger import Ledger
 from tracker.lifecycle.rules import Reason
 from tracker.log.model import DetectionLog, Floats, Frame, Ints, Rejection
 from tracker.results.parquet import ROW_GROUP, open_parquet
-from tracker.results.recorder import Recorder, TrackRows
+from tracker.results.recorder import Recorder, TrackRows, no_rows
 from tracker.results.table import STATE_WORDS, csv_table, parquet_table
 from tracker.settings import Settings, settings_as_toml
 
@@ -112,8 +112,10 @@ class RunWriter:
             self._flush()
 
     def _flush(self) -> None:
-        if not self._waiting and self._parquet is not None:
-            return
+        if not self._waiting:
+            if self._parquet is not None:
+                return
+            self._waiting = [no_rows(self._log.kind)]  # a run without tracks has its files too
         kind, labels = self._log.kind, self._log.labels
         rows = TrackRows.join(self._waiting)
         self._waiting, self._waiting_rows = [], 0

@@ -115,8 +115,12 @@ class GateSettings(_Section):
         ),
     ] = 0.999
     overlap_floor: Annotated[
-        float, Meta(ge=0.0, lt=1.0), about("Boxes: least IoU of a candidate; 0 switches it off")
-    ] = 0.0
+        Annotated[float, Meta(ge=0.0, lt=1.0)] | None,
+        about(
+            "Boxes: least IoU of a candidate; 0 switches it off. None is 0.05 where boxes are "
+            "costed by overlap alone, so that boxes that hardly touch are no rivals, else 0"
+        ),
+    ] = None
     candidate_limit: Annotated[
         int,
         Meta(ge=1_000),
