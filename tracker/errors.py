@@ -141,13 +141,23 @@ class CertificateError(InternalError):
     """The prices do not prove the assignment optimal.
 
     `gap` is the primal minus the dual value in nats, `violation` the largest amount by which
-    a price pair exceeds its cost.
+    a price pair exceeds its cost, both relative to the costs; `evidence` is the component's
+    problem and answer in plain values, for a bug report.
     """
 
-    def __init__(self, message: str, *, frame: int, gap: float, violation: float) -> None:
+    def __init__(
+        self,
+        message: str,
+        *,
+        frame: int,
+        gap: float,
+        violation: float,
+        evidence: dict[str, Any] | None = None,
+    ) -> None:
         self.frame = frame
         self.gap = gap
         self.violation = violation
+        self.evidence = evidence or {}
         super().__init__(f"frame {frame}: {message} (gap {gap:.3g}, violation {violation:.3g})")
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -101,6 +102,30 @@ def associate(
     return tuple(decisions), pairing
 
 
+def _evidence(
+    frame: int, rule: AssociationRule, problem: Problem, solution: Solution
+) -> dict[str, Any]:
+    """The component whose proof failed, in plain values."""
+    components = label_components(problem.start, problem.column, len(problem.new))
+    rows = np.flatnonzero(components.of_row == solution.weakest)
+    columns = np.flatnonzero(components.of_column == solution.weakest)
+    row = np.repeat(np.arange(len(problem.miss)), np.diff(problem.start))
+    inside = np.flatnonzero(np.isin(row, rows))
+    answer = solution.answer
+    return {
+        "frame": frame,
+        "tier": rule.name,
+        "candidates": [
+            [int(row[e]), int(problem.column[e]), float(problem.cost[e])] for e in inside
+        ],
+        "miss": {int(i): float(problem.miss[i]) for i in rows},
+        "new": {int(j): float(problem.new[j]) for j in columns},
+        "pairs": {int(i): int(answer.row_column[i]) for i in rows},
+        "row_price": {int(i): float(answer.row_price[i]) for i in rows},
+        "column_price": {int(j): float(answer.column_price[j]) for j in columns},
+    }
+
+
 def _scored_inside(score: Floats, rule: AssociationRule) -> NDArray[np.bool_]:
     """Detections in the tier's range of scores; one without a score is as good as any."""
     known = np.where(np.isnan(score), np.inf, score)
@@ -165,6 +190,7 @@ def _decide(
             frame=frame.number,
             gap=solution.gap,
             violation=solution.violation,
+            evidence=_evidence(frame.number, rule, problem, solution),
         )
     return TierDecision(
         tier,

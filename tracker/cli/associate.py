@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
+from tracker.cli.options import ColumnNames, DropIdentities, FrameRate, LogFormat, Logs
 from tracker.errors import InputError, MargentError, UsageError
 
 if TYPE_CHECKING:
@@ -15,12 +16,7 @@ if TYPE_CHECKING:
 
 
 def associate(
-    logs: Annotated[
-        list[Path] | None,
-        typer.Argument(
-            metavar="LOG...", help="Detection logs, or folders with one detections.* each."
-        ),
-    ] = None,
+    logs: Logs = None,
     out: Annotated[
         Path | None,
         typer.Option(help="Folder of the run; with several logs, one folder a log inside it."),
@@ -36,25 +32,12 @@ def associate(
             help="Change one setting, e.g. --set lifecycle.coast_seconds=2. Repeatable.",
         ),
     ] = None,
-    frame_rate_hz: Annotated[
-        float | None,
-        typer.Option(help="Frame rate where neither sequence.toml nor timestamps give one."),
-    ] = None,
-    columns: Annotated[
-        list[str] | None,
-        typer.Option(
-            metavar="THEIRS=OURS", help="Read column THEIRS of the log as OURS. Repeatable."
-        ),
-    ] = None,
-    log_format: Annotated[
-        str | None,
-        typer.Option("--format", help="Force the log's format instead of recognising it."),
-    ] = None,
-    drop_identities: Annotated[
-        bool, typer.Option(help="Read a truth or track file as plain detections.")
-    ] = False,
+    frame_rate_hz: FrameRate = None,
+    columns: ColumnNames = None,
+    log_format: LogFormat = None,
+    drop_identities: DropIdentities = False,
     strict: Annotated[
-        bool, typer.Option(help="Stop with exit code 2 if any row would be rejected.")
+        bool, typer.Option("--strict", help="Stop with exit code 2 if any row would be rejected.")
     ] = False,
     extension: Annotated[
         list[Path] | None,
@@ -65,7 +48,8 @@ def associate(
     ] = None,
     workers: Annotated[int, typer.Option(min=1, help="Processes; each takes whole logs.")] = 1,
     print_settings: Annotated[
-        bool, typer.Option(help="Print all settings with their meaning, and stop.")
+        bool,
+        typer.Option("--print-settings", help="Print all settings with their meaning, and stop."),
     ] = False,
 ) -> None:
     """Associate the detections of each log into tracks.

@@ -9,6 +9,7 @@ from typing import Annotated
 
 import typer
 
+from tracker.cli.options import ColumnNames, DropIdentities, FrameRate, LogFormat
 from tracker.errors import EXIT_USAGE, InputError
 
 
@@ -20,23 +21,10 @@ def inspect(
         ),
     ],
     json_: Annotated[bool, typer.Option("--json", help="Print JSON instead of a table.")] = False,
-    columns: Annotated[
-        list[str] | None,
-        typer.Option(
-            metavar="THEIRS=OURS", help="Read column THEIRS of the log as OURS. Repeatable."
-        ),
-    ] = None,
-    log_format: Annotated[
-        str | None,
-        typer.Option("--format", help="Force the log's format instead of recognising it."),
-    ] = None,
-    frame_rate_hz: Annotated[
-        float | None,
-        typer.Option(help="Frame rate where neither sequence.toml nor timestamps give one."),
-    ] = None,
-    drop_identities: Annotated[
-        bool, typer.Option(help="Read a truth or track file as plain detections.")
-    ] = False,
+    columns: ColumnNames = None,
+    log_format: LogFormat = None,
+    frame_rate_hz: FrameRate = None,
+    drop_identities: DropIdentities = False,
 ) -> None:
     """Check detection logs and say what is in them, before anything is computed.
 

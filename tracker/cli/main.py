@@ -7,6 +7,7 @@ at once. Each command imports what it needs inside its function.
 from __future__ import annotations
 
 import errno
+import json
 import os
 import sys
 import tempfile
@@ -20,7 +21,7 @@ from tracker.cli.evaluate import evaluate
 from tracker.cli.explain import explain
 from tracker.cli.inspect import inspect
 from tracker.cli.simulate import simulate
-from tracker.errors import EXIT_DONE, EXIT_INTERNAL, EXIT_USAGE, MargentError
+from tracker.errors import EXIT_DONE, EXIT_INTERNAL, EXIT_USAGE, CertificateError, MargentError
 
 INTERRUPTED = 130
 
@@ -55,6 +56,8 @@ def run(arguments: Sequence[str] | None = None) -> int:
         return outcome if isinstance(outcome, int) else EXIT_DONE
     except typer.Exit as leave:
         return int(leave.exit_code)
+    except CertificateError as error:
+        return _report_proof(error)
     except MargentError as error:
         _say(str(error))
         return error.exit_code
@@ -84,6 +87,16 @@ def _explain_os_error(error: OSError) -> str:
     if error.errno == errno.ENOSPC:
         return f"{where}the disk is full; nothing half-written was left behind"
     return f"{where}{error.strerror or error}"
+
+
+def _report_proof(error: CertificateError) -> int:
+    """Keep the component that was not proved optimal, for a bug report."""
+    with tempfile.NamedTemporaryFile(
+        "w", prefix="margent-component-", suffix=".json", delete=False, encoding="utf-8"
+    ) as file:
+        json.dump(error.evidence, file, indent=1)
+    _say(f"internal error: {error}. Please report it with {file.name}, which has the component.")
+    return error.exit_code
 
 
 def _report_internal(error: Exception) -> int:
