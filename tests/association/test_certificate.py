@@ -2,13 +2,13 @@
 
 import json
 import re
+import sys
 from pathlib import Path
 
 import numpy as np
 import pytest
 
 from tracker import Engine, Frame, Kind, Settings
-from tracker.association import associate as stage
 from tracker.cli.main import run
 from tracker.errors import EXIT_INTERNAL, CertificateError
 
@@ -18,8 +18,6 @@ SAMPLES = Path(__file__).resolve().parent.parent.parent / "sample_sequences"
 @pytest.fixture
 def wrong_solver(monkeypatch):
     """A solver whose answers are not optimal: prices a nat too high."""
-    import sys
-
     module = sys.modules["tracker.association.associate"]
     right = module.solve
 
@@ -53,10 +51,3 @@ def test_the_command_ends_with_code_3_and_a_file(wrong_solver, tmp_path, capsys)
     assert {"candidates", "miss", "new", "row_price"} <= set(json.loads(path.read_text()))
     path.unlink()
     assert not out.exists()
-
-
-def test_the_tolerance_is_rounding_only():
-    assert stage.__module__ == "tracker.association.associate"
-    from tracker.association.associate import PROOF_TOLERANCE
-
-    assert PROOF_TOLERANCE <= 1e-9
