@@ -123,9 +123,10 @@ def _report(facts: dict, folder: Path) -> None:
     for note in facts["notes"]:
         print(f"{facts['name']}: note: {note}", file=sys.stderr)
     if counts["rejected_rows"]:
+        rows = "row" if counts["rejected_rows"] == 1 else "rows"
         print(
-            f"{facts['name']}: {counts['rejected_rows']} rows rejected, listed with their reasons "
-            f"in {folder / 'rejected.csv'}",
+            f"{facts['name']}: {counts['rejected_rows']} {rows} rejected, listed with reasons in "
+            f"{folder / 'rejected.csv'}",
             file=sys.stderr,
         )
     print(
