@@ -106,6 +106,8 @@ def _associate_all(
         extensions,
         watch=lambda frames, total: watched(frames, total=total, label="frames"),
     )
+    if workers > 1 and several:
+        outcomes = watched(outcomes, total=len(paths), label="logs")
     for outcome in outcomes:
         if isinstance(outcome.error, MargentError):
             if not several:
