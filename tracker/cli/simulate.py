@@ -79,7 +79,7 @@ def simulate(
     overrides = [*(set_ or []), *([] if seconds is None else [f"clock.seconds={seconds}"])]
     chosen = scene_settings(find_scene(scene).settings, settings, tuple(overrides))
     if print_settings:
-        sys.stdout.write(settings_as_toml(chosen))  # type: ignore[arg-type]
+        sys.stdout.write(settings_as_toml(chosen))
         return
     if video is not None and video.suffix.lower() != ".mp4":
         raise UsageError(f"--video writes MP4 files: name it {video.stem}.mp4 (found {video.name})")

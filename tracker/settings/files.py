@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import difflib
 import math
-import tomllib
 from collections.abc import Iterator
 from pathlib import Path
 from typing import Any, get_args, get_type_hints
@@ -12,7 +10,7 @@ from typing import Any, get_args, get_type_hints
 import msgspec
 from msgspec import Meta, Struct
 
-from tracker.errors import InputError, SettingsError
+from tracker.settings.reading import apply_override, read_toml, refusal
 from tracker.settings.schema import Settings
 
 
@@ -26,9 +24,9 @@ def load_settings(path: str | Path | None = None, overrides: tuple[str, ...] = (
     source = ""
     if path is not None:
         source = str(path)
-        values = _read_toml(Path(path))
+        values = read_toml(Path(path), example="margent associate --print-settings")
     for text in overrides:
-        _apply_override(values, text)
+        apply_override(values, text)
     return settings_from(values, source=source)
 
 
@@ -37,9 +35,8 @@ def settings_from(values: dict[str, Any], source: str = "") -> Settings:
     try:
         return msgspec.convert(_unset(values, Settings), Settings)
     except msgspec.ValidationError as error:
-        problem, _, path = str(error).partition(" - at `$.")
-        path = path.rstrip("`")
-        raise SettingsError(_remedy(problem, path), setting=path, source=source) from None
+        known = [path for path, _, _ in describe()]
+        raise refusal(error, known, source=source, none_such="there is no setting") from None
 
 
 def _unset(value: Any, hint: Any) -> Any:
@@ -68,7 +65,7 @@ def settings_as_dict(settings: Settings) -> dict[str, Any]:
     return msgspec.to_builtins(settings)
 
 
-def settings_as_toml(settings: Settings, *, comments: bool = True) -> str:
+def settings_as_toml(settings: Struct, *, comments: bool = True) -> str:
     """The complete settings as TOML; with comments each line says meaning, unit and source."""
     lines: list[str] = []
     section = ""
@@ -92,7 +89,7 @@ def _heading(section: str) -> str:
     return f"[{name}{below}]" if below else f"[[{name}]]"
 
 
-def describe(settings: Settings | None = None) -> Iterator[tuple[str, Any, dict[str, str]]]:
+def describe(settings: Struct | None = None) -> Iterator[tuple[str, Any, dict[str, str]]]:
     """Yield (path, value, {'meaning', 'unit', 'source', 'allowed'}) of every setting in order."""
     yield from _describe(settings or Settings(), "")
 
@@ -168,47 +165,3 @@ def _toml_value(value: Any) -> str:
     if isinstance(value, (tuple, list)):
         return "[" + ", ".join(_toml_value(item) for item in value) + "]"
     return msgspec.json.encode(str(value)).decode()
-
-
-def _read_toml(path: Path) -> dict[str, Any]:
-    try:
-        return tomllib.loads(path.read_text(encoding="utf-8"))
-    except OSError as error:
-        raise InputError(f"the settings file cannot be read: {error.strerror}", path=path) from None
-    except UnicodeDecodeError:
-        raise InputError("the settings file is not UTF-8 text", path=path) from None
-    except tomllib.TOMLDecodeError as error:
-        raise InputError(
-            f"not valid TOML: {error}",
-            path=path,
-            remedy="'margent associate --print-settings' shows a complete file.",
-        ) from None
-
-
-def _apply_override(values: dict[str, Any], text: str) -> None:
-    path, equals, raw = text.partition("=")
-    if not equals or not path.strip():
-        raise SettingsError(f"expected section.name=value, found {text!r}", source="--set")
-    try:
-        value = tomllib.loads(f"value = {raw}")["value"]
-    except tomllib.TOMLDecodeError:
-        value = raw.strip()  # a bare word is a string
-    *parents, name = path.strip().split(".")
-    target = values
-    for parent in parents:
-        target = target.setdefault(parent, {})
-        if not isinstance(target, dict):
-            raise SettingsError(f"{parent!r} is not a section", setting=path, source="--set")
-    target[name] = value
-
-
-def _remedy(problem: str, path: str) -> str:
-    """Turn msgspec's message into one that also says what would be right."""
-    if problem.startswith("Object contains unknown field"):
-        name = problem.split("`")[1]
-        prefix = f"{path}." if path else ""
-        known = [key for key, _, _ in describe()]
-        near = difflib.get_close_matches(prefix + name, known, n=1, cutoff=0.4)
-        hint = f"; did you mean '{near[0]}'?" if near else ""
-        return f"there is no setting '{prefix}{name}'{hint}"
-    return problem[0].lower() + problem[1:]

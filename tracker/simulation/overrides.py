@@ -2,17 +2,16 @@
 
 from __future__ import annotations
 
-import difflib
 import math
 import shlex
-import tomllib
 from pathlib import Path
 from typing import Any, TypeVar
 
 import msgspec
 
-from tracker.errors import InputError, SettingsError
+from tracker.errors import SettingsError
 from tracker.settings import describe
+from tracker.settings.reading import apply_override, merge, read_toml, refusal
 from tracker.simulation.settings import SceneSettings
 
 S = TypeVar("S", bound=SceneSettings)
@@ -26,17 +25,16 @@ def scene_settings(defaults: S, file: Path | None = None, overrides: tuple[str, 
     """
     values = msgspec.to_builtins(defaults)
     if file is not None:
-        _merge(values, _read_toml(file))
+        merge(values, read_toml(file, example="margent simulate SCENE --print-settings"))
     for text in overrides:
-        _apply(values, text)
+        apply_override(values, text)
     source = "--set" if file is None else str(file)
     try:
         settings = msgspec.convert(values, type(defaults))
     except msgspec.ValidationError as error:
-        problem, _, path = str(error).partition(" - at `$.")
-        path = path.rstrip("`")
-        raise SettingsError(_remedy(problem, path, defaults), setting=path, source=source) from None
-    for path, value, _ in describe(settings):  # type: ignore[arg-type]
+        known = [path for path, _, _ in describe(defaults)]
+        raise refusal(error, known, source=source, none_such="this scene has no setting") from None
+    for path, value, _ in describe(settings):
         if isinstance(value, float) and not math.isfinite(value):
             raise SettingsError("must be a finite number", setting=path, source=source)
     return settings
@@ -75,53 +73,3 @@ def _toml(value: Any) -> str:
     if isinstance(value, (list, tuple)):
         return "[" + ", ".join(_toml(item) for item in value) + "]"
     return msgspec.json.encode(value).decode()
-
-
-def _read_toml(path: Path) -> dict[str, Any]:
-    try:
-        return tomllib.loads(path.read_text(encoding="utf-8"))
-    except OSError as error:
-        raise InputError(f"the settings file cannot be read: {error.strerror}", path=path) from None
-    except UnicodeDecodeError:
-        raise InputError("the settings file is not UTF-8 text", path=path) from None
-    except tomllib.TOMLDecodeError as error:
-        raise InputError(
-            f"not valid TOML: {error}",
-            path=path,
-            remedy="'margent simulate SCENE --print-settings' shows a complete file.",
-        ) from None
-
-
-def _merge(values: dict[str, Any], new: dict[str, Any]) -> None:
-    """Lay `new` over `values`, section by section; unknown names stay, to be refused later."""
-    for name, value in new.items():
-        if isinstance(value, dict) and isinstance(values.get(name), dict):
-            _merge(values[name], value)
-        else:
-            values[name] = value
-
-
-def _apply(values: dict[str, Any], text: str) -> None:
-    path, equals, raw = text.partition("=")
-    if not equals or not path.strip():
-        raise SettingsError(f"expected section.name=value, found {text!r}", source="--set")
-    try:
-        value = tomllib.loads(f"value = {raw}")["value"]
-    except tomllib.TOMLDecodeError:
-        value = raw.strip()  # a bare word is a string
-    nested: Any = value
-    for name in reversed(path.strip().split(".")):
-        nested = {name: nested}
-    _merge(values, nested)
-
-
-def _remedy(problem: str, path: str, defaults: SceneSettings) -> str:
-    """Turn msgspec's message into one that also says what would be right."""
-    if not problem.startswith("Object contains unknown field"):
-        return problem[0].lower() + problem[1:]
-    name = problem.split("`")[1]
-    full = f"{path}.{name}" if path else name
-    known = [key for key, _, _ in describe(defaults)]  # type: ignore[arg-type]
-    near = difflib.get_close_matches(full, known, n=1, cutoff=0.4)
-    hint = f"; did you mean '{near[0]}'?" if near else ""
-    return f"this scene has no setting '{full}'{hint}"
