@@ -8,7 +8,7 @@ import numpy as np
 from numba import njit
 from numpy.typing import NDArray
 
-from tracker.kernels.grid import meeting_pairs
+from tracker.kernels.grid import SAMPLE, meeting_pairs
 from tracker.kernels.kalman import squared_mahalanobis
 from tracker.kernels.overlap import SMALLEST_SIZE, box_overlap
 
@@ -55,10 +55,14 @@ def gate_candidates(
 
     A pair can only pass if the axis-aligned rectangles around track and detection meet: half
     extents √(γ P_kk) and √(γ R_kk), since |Δ_k| ≤ √(γ (P_kk + R_kk)); or the boxes themselves
-    where an overlap is required.
+    where an overlap is required. Either bound holds on its own, so each axis takes the tighter.
     """
-    low, high = _rectangles(mean, covariance, threshold, overlap_floor)
-    other_low, other_high = _detection_rectangles(z, variance, threshold, overlap_floor)
+    by_box = np.zeros(2, np.bool_)
+    for axis in range(2):
+        if overlap_floor > 0.0:
+            by_box[axis] = _box_is_tighter(mean, covariance, z, variance, threshold, axis)
+    low, high = _rectangles(mean, covariance, threshold, by_box)
+    other_low, other_high = _detection_rectangles(z, variance, threshold, by_box)
     near_start, near = meeting_pairs(low, high, other_low, other_high, 8 * limit)
     d = z.shape[1]
     scratch = np.empty((d + 2, d))
@@ -111,17 +115,41 @@ def _half_extent(threshold: float, variance: float) -> float:
 
 
 @njit(cache=True)
+def _box_is_tighter(
+    mean: NDArray,
+    covariance: NDArray,
+    z: NDArray,
+    variance: NDArray,
+    threshold: float,
+    axis: int,
+) -> bool:
+    """Whether boxes reach less far than gates along an axis, by a sample of both sides."""
+    box = 0.0
+    gate = 0.0
+    step = max(1, len(mean) // SAMPLE)
+    for i in range(0, len(mean), step):
+        box += 0.5 * mean[i, 2 + axis] / (len(mean) // step)
+        gate += _half_extent(threshold, covariance[i, axis, axis]) / (len(mean) // step)
+    step = max(1, len(z) // SAMPLE)
+    for j in range(0, len(z), step):
+        box += 0.5 * z[j, 2 + axis] / (len(z) // step)
+        gate += _half_extent(threshold, variance[j, axis]) / (len(z) // step)
+    return not gate < box
+
+
+@njit(cache=True)
 def _rectangles(
-    mean: NDArray, covariance: NDArray, threshold: float, overlap_floor: float
+    mean: NDArray, covariance: NDArray, threshold: float, by_box: NDArray
 ) -> tuple[NDArray, NDArray]:
-    """Corners of the tracks' rectangles: their boxes if an overlap is required, else gates."""
+    """Corners of the tracks' rectangles: their boxes or gates, as chosen for each axis."""
     low = np.empty((len(mean), 2))
     high = np.empty((len(mean), 2))
     for i in range(len(mean)):
         for k in range(2):
-            half = _half_extent(threshold, covariance[i, k, k])
-            if overlap_floor > 0.0:
+            if by_box[k]:
                 half = 0.5 * max(mean[i, 2 + k], SMALLEST_SIZE)
+            else:
+                half = _half_extent(threshold, covariance[i, k, k])
             low[i, k] = mean[i, k] - half
             high[i, k] = mean[i, k] + half
     return low, high
@@ -129,16 +157,17 @@ def _rectangles(
 
 @njit(cache=True)
 def _detection_rectangles(
-    z: NDArray, variance: NDArray, threshold: float, overlap_floor: float
+    z: NDArray, variance: NDArray, threshold: float, by_box: NDArray
 ) -> tuple[NDArray, NDArray]:
     """The same for detections."""
     low = np.empty((len(z), 2))
     high = np.empty((len(z), 2))
     for j in range(len(z)):
         for k in range(2):
-            half = _half_extent(threshold, variance[j, k])
-            if overlap_floor > 0.0:
+            if by_box[k]:
                 half = 0.5 * max(z[j, 2 + k], SMALLEST_SIZE)
+            else:
+                half = _half_extent(threshold, variance[j, k])
             low[j, k] = z[j, k] - half
             high[j, k] = z[j, k] + half
     return low, high
