@@ -23,7 +23,7 @@ from tracker.kernels.assignment import problem_frontier
 from tracker.kernels.margin import force_costs
 from tracker.log.model import Frame, Kind
 from tracker.results.parquet import ROW_GROUP, open_parquet
-from tracker.results.table import STATE_WORDS, label_words
+from tracker.results.table import STATE_WORDS, label_words, lists, missing_if_nan
 from tracker.settings import Settings
 
 DECISION_WORDS = pa.array(["pair", "miss", "new"])
@@ -210,11 +210,11 @@ class _ChunkedFile:
         if name == "label":
             return label_words(values, self._labels)
         if name == "covariance":
-            return pa.FixedSizeListArray.from_arrays(pa.array(values.ravel()), values.shape[1])
+            return lists(values)
         if name in ("track", "detection", "line"):
             return pa.array(values, mask=values < 0)
         if values.dtype.kind == "f":
-            return pa.array(values, mask=np.isnan(values))
+            return missing_if_nan(values)
         return pa.array(values)
 
 

@@ -93,7 +93,7 @@ def associate(
     free = np.ones(len(frame), np.bool_)
     for k, rule in enumerate(rules):
         tracks = np.flatnonzero((pairing < 0) & ((rule.states >> table.state) & 1).astype(bool))
-        detections = np.flatnonzero(free & _scored_inside(frame.score, rule))
+        detections = np.flatnonzero(free & scored_inside(frame.score, rule))
         decision = _decide(k, rule, table, frame, variance, tracks, detections, coupled, explain)
         decisions.append(decision)
         column = decision.solution.answer.row_column
@@ -126,7 +126,7 @@ def _evidence(
     }
 
 
-def _scored_inside(score: Floats, rule: AssociationRule) -> NDArray[np.bool_]:
+def scored_inside(score: Floats, rule: AssociationRule) -> NDArray[np.bool_]:
     """Detections in the tier's range of scores; one without a score is as good as any."""
     known = np.where(np.isnan(score), np.inf, score)
     inside = known >= rule.score_from

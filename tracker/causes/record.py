@@ -10,6 +10,7 @@ import numpy as np
 import pyarrow.csv
 import pyarrow.parquet as pq
 
+from tracker.association.associate import scored_inside
 from tracker.association.rule import association_rules
 from tracker.diagnosis.ledger_reading import RunLedger
 from tracker.kernels.kalman import squared_mahalanobis
@@ -17,6 +18,7 @@ from tracker.kernels.overlap import box_overlap
 from tracker.ledger import filter_names
 from tracker.log.model import Floats, Ints, Kind
 from tracker.results import Tracks, TrackState, read_run
+from tracker.results.read import square_matrices
 
 
 @dataclass(frozen=True, slots=True)
@@ -44,7 +46,8 @@ class RunRecord:
         ledger = RunLedger(folder)
         self.settings = ledger.settings
         self.kind: Kind = ledger.kind
-        self.rule = association_rules(self.settings, self.kind)[0]
+        self._rules = association_rules(self.settings, self.kind)
+        self.rule = self._rules[0]
         self.tracks: Tracks = read_run(folder)
         names = filter_names(self.kind)
         decisions = pq.read_table(
@@ -80,14 +83,7 @@ class RunRecord:
         }
         self.estimate: Floats = np.column_stack([expected[name].to_numpy() for name in names])
         self.unseen: Floats = expected["unseen_seconds"].to_numpy()
-        d = self.kind.dimension
-        corner = np.triu_indices(d)
-        flat = np.array(expected["covariance"].combine_chunks().flatten()).reshape(
-            -1, len(corner[0])
-        )
-        self.covariance: Floats = np.zeros((len(flat), d, d))
-        self.covariance[:, corner[0], corner[1]] = flat
-        self.covariance[:, corner[1], corner[0]] = flat
+        self.covariance: Floats = square_matrices(expected["covariance"], self.kind.dimension)
 
     @cached_property
     def row_of_detection(self) -> dict[tuple[int, int], int]:
@@ -144,14 +140,8 @@ class RunRecord:
 
     def outside_all_tiers(self, row: int) -> bool:
         """Whether no tier takes detections of that score."""
-        score = self.score[row]
-        if np.isnan(score):
-            return False
-        return not any(
-            (tier.score_from is None or score >= tier.score_from)
-            and (tier.score_below is None or score < tier.score_below)
-            for tier in self.settings.tiers
-        )
+        score = self.score[row : row + 1]
+        return not any(scored_inside(score, rule)[0] for rule in self._rules)
 
     def expected(self, frame: int, track: int) -> int | None:
         """Row of the track's prediction in a frame, None if it was not alive."""

@@ -11,7 +11,7 @@ from typing import Any
 
 from tracker.causes.diagnose import Diagnosis
 from tracker.causes.model import SETTING, Cause, Error, Finding
-from tracker.errors import OutputError
+from tracker.results.folder import atomic_file
 
 GATE_PROBABILITIES = (0.99, 0.999, 0.9999, 0.99999, 0.999999)
 COAST_SECONDS = (0.5, 1.0, 2.0, 3.0, 5.0, 10.0)
@@ -133,10 +133,5 @@ def write_causes(diagnosis: Diagnosis, path: Path) -> None:
     for finding in diagnosis.findings:
         values = (getattr(finding, name) for name in names)
         rows.writerow(["" if value is None else value for value in values])
-    partial = path.with_name(path.name + ".partial")
-    try:
-        partial.write_text(text.getvalue(), encoding="utf-8")
-        partial.replace(path)
-    except OSError as error:
-        partial.unlink(missing_ok=True)
-        raise OutputError(f"cannot be written: {error.strerror}", path=path) from None
+    with atomic_file(path) as working:
+        working.write_text(text.getvalue(), encoding="utf-8")

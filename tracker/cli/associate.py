@@ -90,11 +90,9 @@ def _associate_all(
 ) -> None:
     """All logs, in one process or several; one log's error does not stop the others."""
     from tracker.batch import associate_logs
-    from tracker.cli.progress import watched
-    from tracker.kernels import compiled_before
+    from tracker.cli.progress import announce_compiling, watched
 
-    if not compiled_before():
-        print("compiling for this machine, once; this takes some seconds ...", file=sys.stderr)
+    announce_compiling()
     several = len(paths) > 1
     failures: list[MargentError] = []
     outcomes = associate_logs(

@@ -153,7 +153,7 @@ def evaluate(
 
     margent evaluate runs --truth sample_sequences --limit "idf1>=0.72" --junit scores.xml
     """
-    from tracker.cli.progress import watched
+    from tracker.cli.progress import announce_compiling, watched
     from tracker.cli.sequences import sources_by_name, truths_by_name
     from tracker.evaluation import Scope, evaluate_all
     from tracker.evaluation.consistency import check_run, checks_table
@@ -167,7 +167,6 @@ def evaluate(
         scores_table,
         thresholds_table,
     )
-    from tracker.kernels import compiled_before
     from tracker.results import is_run
 
     counted = {"as-reported": None, "yes": True, "no": False}
@@ -197,8 +196,7 @@ def evaluate(
         asked += read_limits(limits, list(sequences))
     truths = truths_by_name(truth, list(sequences))
     scopes = _with_regions(scope, list(sequences), ignore_region or [])
-    if not compiled_before():
-        typer.echo("compiling for this machine, once; this takes some seconds ...", err=True)
+    announce_compiling()
     if self_check:
         _check_truth(truths, scopes, referee == "on")
     found = evaluate_all(

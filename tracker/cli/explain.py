@@ -45,11 +45,10 @@ def explain(
 
     Example: margent explain runs/forecourt --frame 120 --track 7 --picture decision.png
     """
+    from tracker.cli.progress import announce_compiling
     from tracker.diagnosis import explain as explain_frame
-    from tracker.kernels import compiled_before
 
-    if not compiled_before():
-        print("compiling for this machine, once; this takes some seconds ...", file=sys.stderr)
+    announce_compiling()
     numbers, lines = _split(why_not or [])
     told = explain_frame(
         run,

@@ -1,4 +1,4 @@
-"""A progress bar on standard error, only where a person is watching."""
+"""What is said while work goes on: on standard error, never among the results."""
 
 from __future__ import annotations
 
@@ -7,6 +7,14 @@ from collections.abc import Iterable, Iterator
 from typing import TypeVar
 
 Item = TypeVar("Item")
+
+
+def announce_compiling() -> None:
+    """Say that the first run compiles, where it does."""
+    from tracker.kernels import compiled_before
+
+    if not compiled_before():
+        print("compiling for this machine, once; this takes some seconds ...", file=sys.stderr)
 
 
 def watched(items: Iterable[Item], *, total: int, label: str) -> Iterator[Item]:

@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from tracker.diagnosis.ledger_reading import Event, RunLedger
 from tracker.errors import InputError
 from tracker.log.model import Floats, Ints
+from tracker.results.read import square_matrices
 
 SHOWN_NUMBERS = 12  # that many ids are named in an error
 
@@ -117,7 +118,6 @@ def _read_frame(ledger: RunLedger, frame: int) -> FrameRecord:
     decisions = _decision_rows(table)
     events = ledger.events(frame=frame)
     names = ledger.coordinates
-    count, dimension = len(predictions), len(names)
     times = table["time"].slice(0, 1).to_pylist() or [event.time for event in events]
     record = FrameRecord(
         number=frame,
@@ -126,7 +126,7 @@ def _read_frame(ledger: RunLedger, frame: int) -> FrameRecord:
         state=predictions["state"].to_pylist(),
         unseen=_real(predictions, "unseen_seconds"),
         estimate=_stacked(predictions, names),
-        covariance=_squares(predictions["covariance"], count, dimension),
+        covariance=square_matrices(predictions["covariance"], len(names)),
         line=_whole(detections, "line"),
         score=_real(detections, "score"),
         label=detections["label"].to_pylist(),
@@ -210,14 +210,3 @@ def _real(table: pa.Table, name: str) -> Floats:
 
 def _stacked(table: pa.Table, names: list[str] | tuple[str, ...]) -> Floats:
     return np.ascontiguousarray(np.column_stack([_real(table, name) for name in names]))
-
-
-def _squares(column: pa.ChunkedArray, count: int, dimension: int) -> Floats:
-    """(k, d, d) from upper triangles row by row."""
-    entries = dimension * (dimension + 1) // 2
-    upper = column.combine_chunks().flatten().to_numpy().reshape(count, entries)
-    square = np.zeros((count, dimension, dimension))
-    row, other = np.triu_indices(dimension)
-    square[:, row, other] = upper
-    square[:, other, row] = upper
-    return square

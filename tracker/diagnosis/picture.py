@@ -3,8 +3,6 @@
 from __future__ import annotations
 
 import math
-import os
-import tempfile
 import textwrap
 from pathlib import Path
 from typing import Any
@@ -15,8 +13,9 @@ from tracker.diagnosis.explanation import DetectionView, Explanation, TrackView
 from tracker.diagnosis.picture_labels import place_labels
 from tracker.diagnosis.sketch import BEST, FAINT, INK, Sketch, drawn_decisions, extent
 from tracker.diagnosis.story import briefs, headline, title
-from tracker.errors import OutputError, UsageError
+from tracker.errors import UsageError
 from tracker.log.model import Floats
+from tracker.results.folder import atomic_file
 
 INCHES = (9.0, 4.0, 9.0)  # width of the figure, least and most height of the axes
 DOTS_AN_INCH = 130
@@ -193,16 +192,5 @@ def _gate_words(sketch: Sketch) -> str:
 
 
 def _write(figure: Any, path: Path) -> None:
-    """Write beside the target and rename, so that the picture is whole or not there."""
-    working = ""
-    try:
-        handle, working = tempfile.mkstemp(prefix=f".{path.name}-", dir=path.parent)
-        with os.fdopen(handle, "wb") as file:
-            figure.savefig(file, format="png", metadata={"Software": None})
-        Path(working).chmod(0o644)
-        Path(working).replace(path)
-    except OSError as error:
-        raise OutputError(f"cannot be written: {error.strerror}", path=path) from None
-    finally:
-        if working:
-            Path(working).unlink(missing_ok=True)
+    with atomic_file(path) as working, working.open("wb") as file:
+        figure.savefig(file, format="png", metadata={"Software": None})

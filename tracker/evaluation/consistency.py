@@ -27,7 +27,7 @@ from tracker.evaluation.counts import count
 from tracker.evaluation.couples import find_couples
 from tracker.evaluation.scope import Scope, close_pairs, scored_rows
 from tracker.log.model import Floats, Truth
-from tracker.results.read import read_run
+from tracker.results.read import read_run, square_matrices
 from tracker.settings import load_settings
 
 INSIDE = 0.95
@@ -127,16 +127,8 @@ def _estimates(folder: Path, dimension: int) -> tuple[Floats, Floats]:
         table = pq.read_table(path, columns=["estimate", "covariance"])
     except (OSError, KeyError, ValueError) as error:
         raise InputError(f"has no covariances: {error}", path=path) from None
-    rows = len(table)
-    estimate, corner = (
-        pc.list_flatten(table[name]).to_numpy().reshape(rows, -1)
-        for name in ("estimate", "covariance")
-    )
-    upper = np.triu_indices(dimension)
-    covariance = np.empty((rows, dimension, dimension))
-    covariance[:, upper[0], upper[1]] = corner
-    covariance[:, upper[1], upper[0]] = corner
-    return estimate, covariance
+    estimate = pc.list_flatten(table["estimate"]).to_numpy().reshape(-1, dimension)
+    return estimate, square_matrices(table["covariance"], dimension)
 
 
 def _innovations(ledger: Path) -> Floats:

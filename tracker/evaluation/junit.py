@@ -2,15 +2,14 @@
 
 from __future__ import annotations
 
-import os
 import re
-import tempfile
 from collections.abc import Sequence
 from pathlib import Path
 from xml.etree import ElementTree
 
 from tracker.errors import OutputError
 from tracker.evaluation.limits import Verdict
+from tracker.results.folder import atomic_file
 
 SUITE = "margent evaluate"
 # What XML 1.0 cannot hold even when escaped.
@@ -57,21 +56,12 @@ def write_junit(path: Path, verdicts: Sequence[Verdict]) -> None:
 
     Raises OutputError where it cannot be written.
     """
-    temporary = None
     try:
         path.parent.mkdir(parents=True, exist_ok=True)
-        with tempfile.NamedTemporaryFile(
-            "w", encoding="utf-8", dir=path.parent, prefix=f".{path.name}-", delete=False
-        ) as file:
-            temporary = file.name
-            file.write(junit_text(verdicts))
-        os.chmod(temporary, 0o644)
-        os.replace(temporary, path)
     except OSError as error:
-        if temporary is not None:
-            Path(temporary).unlink(missing_ok=True)
-        reason = error.strerror or str(error)
-        raise OutputError(f"cannot be written: {reason}", path=path) from None
+        raise OutputError(f"cannot be written: {error.strerror}", path=path) from None
+    with atomic_file(path) as working:
+        working.write_text(junit_text(verdicts), encoding="utf-8")
 
 
 def _clean(text: str) -> str:

@@ -1,7 +1,8 @@
-"""Folders that appear complete or not at all."""
+"""Folders and files that appear complete or not at all."""
 
 from __future__ import annotations
 
+import os
 import shutil
 import tempfile
 from collections.abc import Iterator
@@ -9,6 +10,30 @@ from contextlib import contextmanager
 from pathlib import Path
 
 from tracker.errors import OutputError
+
+
+@contextmanager
+def atomic_file(target: Path) -> Iterator[Path]:
+    """Yield a temporary file beside `target`, renamed to it at the end, removed on failure.
+
+    Raises OutputError where the file cannot be written.
+    """
+    working: Path | None = None
+    try:
+        handle, name = tempfile.mkstemp(
+            prefix=f".{target.stem}-", suffix=target.suffix, dir=target.parent
+        )
+        os.close(handle)
+        working = Path(name)
+        yield working
+        working.chmod(0o644)
+        working.replace(target)
+    except OSError as error:
+        reason = error.strerror or str(error)
+        raise OutputError(f"cannot be written: {reason}", path=target) from None
+    finally:
+        if working is not None:
+            working.unlink(missing_ok=True)
 
 
 @contextmanager

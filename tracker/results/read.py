@@ -7,10 +7,11 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
+import pyarrow as pa
 import pyarrow.parquet as pq
 
 from tracker.errors import InputError
-from tracker.log.model import Kind, SequenceFacts, box_centre
+from tracker.log.model import Floats, Kind, SequenceFacts, box_centre
 from tracker.results.tracks import Tracks, TrackState
 
 
@@ -64,6 +65,16 @@ def read_run(folder: str | Path) -> Tracks:
         reported=table["reported"].to_numpy().astype(np.bool_),
         line=table["line"].fill_null(-1).to_numpy(),
     )
+
+
+def square_matrices(triangles: pa.ChunkedArray, dimension: int) -> Floats:
+    """(n, d, d) symmetric matrices from lists of their upper triangles, row by row."""
+    row, other = np.triu_indices(dimension)
+    upper = triangles.combine_chunks().flatten().to_numpy().reshape(-1, len(row))
+    square = np.empty((len(upper), dimension, dimension))
+    square[:, row, other] = upper
+    square[:, other, row] = upper
+    return square
 
 
 def _floats(column: Any) -> np.ndarray:

@@ -27,9 +27,9 @@ def csv_table(rows: TrackRows, kind: Kind, labels: tuple[str, ...]) -> pa.Table:
     for k, name in enumerate(kind.columns):
         columns[name] = pa.array(shown[:, k])
     columns |= {
-        "score": _missing_if_nan(rows.score),
+        "score": missing_if_nan(rows.score),
         "label": label_words(rows.label, labels),
-        "confidence": _missing_if_nan(np.round(rows.confidence, 4)),
+        "confidence": missing_if_nan(np.round(rows.confidence, 4)),
         "state": STATE_WORDS.take(pa.array(rows.state)),
         "reported": pa.array(rows.reported.astype(np.int8)),
         "line": pa.array(rows.line, mask=rows.line < 0),
@@ -54,14 +54,14 @@ def parquet_table(rows: TrackRows, kind: Kind, labels: tuple[str, ...]) -> pa.Ta
     for k, name in enumerate(rate_names(kind)):
         columns[name] = pa.array(rows.rate[:, k])
     columns |= {
-        "score": _missing_if_nan(rows.score),
+        "score": missing_if_nan(rows.score),
         "label": label_words(rows.label, labels),
-        "confidence": _missing_if_nan(rows.confidence),
+        "confidence": missing_if_nan(rows.confidence),
         "state": STATE_WORDS.take(pa.array(rows.state)),
         "reported": pa.array(rows.reported),
         "line": pa.array(rows.line, mask=rows.line < 0),
-        "estimate": _lists(rows.estimate),
-        "covariance": _lists(rows.covariance),
+        "estimate": lists(rows.estimate),
+        "covariance": lists(rows.covariance),
     }
     return pa.table(columns)
 
@@ -80,7 +80,8 @@ def label_words(codes: Codes, labels: tuple[str, ...]) -> pa.Array:
     return words.take(pa.array(codes, mask=codes < 0))
 
 
-def _lists(values: Floats) -> pa.Array:
+def lists(values: Floats) -> pa.Array:
+    """(n, k) numbers as n lists of k."""
     flat = pa.array(np.ascontiguousarray(values).ravel())
     return pa.FixedSizeListArray.from_arrays(flat, values.shape[1])
 
@@ -89,6 +90,7 @@ def _as_written(z: Floats, kind: Kind) -> Floats:
     return box_corner(z) if kind is Kind.BOX else z
 
 
-def _missing_if_nan(values: Floats) -> pa.Array:
+def missing_if_nan(values: Floats) -> pa.Array:
+    """Numbers, null for nan."""
     missing: NDArray[np.bool_] = np.isnan(values)
     return pa.array(values, mask=missing)

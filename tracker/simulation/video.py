@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import os
-import tempfile
 from collections.abc import Iterator
 from pathlib import Path
 from typing import Any, cast
@@ -13,6 +11,7 @@ from numpy.typing import NDArray
 
 from tracker.errors import OutputError, UsageError
 from tracker.log.model import Floats, Kind
+from tracker.results.folder import atomic_file
 from tracker.simulation.sensors.camera import CameraSceneSettings
 from tracker.simulation.sensors.obstacles import obstacle_boxes
 from tracker.simulation.sensors.projection import Pose, project
@@ -56,19 +55,11 @@ def write_video(sequence: SimulatedSequence, path: Path, frames: Iterator[Image]
     rate = max(sequence.facts.frame_rate_hz or SLOWEST_HZ, SLOWEST_HZ)
     try:
         path.parent.mkdir(parents=True, exist_ok=True)
-        handle, working = tempfile.mkstemp(suffix=".mp4", prefix=f".{path.stem}-", dir=path.parent)
-        os.close(handle)
     except OSError as error:
         raise OutputError(f"cannot be written: {error.strerror}", path=path) from None
-    try:
-        count = _encode(cv2, working, rate, frames)
-        _check(cv2, working, count, path)
-        Path(working).chmod(0o644)
-        Path(working).replace(path)
-    except OSError as error:
-        raise OutputError(f"cannot be written: {error.strerror}", path=path) from None
-    finally:
-        Path(working).unlink(missing_ok=True)
+    with atomic_file(path) as working:
+        count = _encode(cv2, str(working), rate, frames)
+        _check(cv2, str(working), count, path)
 
 
 def _encode(cv2: Any, path: str, rate: float, frames: Iterator[Image]) -> int:
