@@ -167,3 +167,14 @@ def test_labels_of_rejected_rows_leave_no_trace(tmp_path):
     log = read_log(files.save(tmp_path, text))
     assert log.labels == ("bbb", "ccc")
     assert log.label.tolist() == [0, 1]
+
+
+def test_ids_beyond_what_a_float_holds_stay_apart(tmp_path):
+    """Neighbours above 2**53 are one and the same float64 (IEEE 754: 53 significant bits)."""
+    ids = (2**53, 2**53 + 1, 2**63 + 5)
+    rows = "".join(f"{frame},{name},0,0,10,20\n" for frame in (1, 2) for name in ids)
+    path = files.save(tmp_path, "frame,object,left,top,width,height\n" + rows, "truth.csv")
+    truth = read_truth(path)
+    assert truth.object_names == tuple(map(str, ids))
+    assert truth.rejections == ()
+    assert truth.object.tolist() == [0, 1, 2] * 2

@@ -95,16 +95,29 @@ def optional_numbers(sieve: Sieve, column: str) -> Floats:
 
 def _in_order(words: Words) -> Words:
     """Identities that are all whole numbers, ordered by size, '7.0' and '7' being one."""
-    try:
-        numbers = [float(word) for word in words.words]
-    except ValueError:
-        return words
-    if not all(number.is_integer() for number in numbers):
+    numbers = [number for word in words.words if (number := _whole_number(word)) is not None]
+    if len(numbers) < len(words.words):
         return words
     distinct = sorted(set(numbers))
     rank = {number: k for k, number in enumerate(distinct)}
     new = np.array([*(rank[number] for number in numbers), -1], dtype=np.int32)
-    return Words(new[words.code], tuple(str(int(number)) for number in distinct))
+    return Words(new[words.code], tuple(map(str, distinct)))
+
+
+def _whole_number(word: str) -> int | None:
+    """The number that a word is, None if it is no whole one.
+
+    By way of int where that reads it: a float would take ids beyond 2**53 for their neighbours.
+    """
+    try:
+        return int(word)
+    except ValueError:
+        pass
+    try:
+        number = float(word)
+    except ValueError:
+        return None
+    return int(number) if number.is_integer() else None
 
 
 def _any_named(words: Words) -> bool:
