@@ -25,7 +25,17 @@ TOP_LEVEL = {
     "scripts",
     "sample_sequences",
 }
-HEAVY = ("numba", "pandas", "cv2", "pyarrow", "scipy", "matplotlib")
+HEAVY = (
+    "numba",
+    "pandas",
+    "cv2",
+    "pyarrow",
+    "scipy",
+    "matplotlib",
+    "plotly",
+    "optuna",
+    "distributed",
+)
 TYPE_NAMES = ("__future__", "typing", "collections.abc")
 KERNEL_IMPORTS = ("numpy", "numba", "math", "tracker.kernels", *TYPE_NAMES)
 # No twin: the queue of the shortest-path search. Its users' twins do without one, and checking
@@ -34,7 +44,7 @@ WITHOUT_TWIN = {"frontier.py", "problem_frontier"}
 # Lowest first: a part of tracker may import what is in its own package or in an earlier line.
 # The longest name that fits decides; DEVELOPERS.md draws the same.
 LAYERS = (
-    ("errors", "kernels"),
+    ("errors", "kernels", "executors"),
     ("settings",),
     ("log.model",),
     ("results.tracks", "results.folder", "results.parquet"),
@@ -45,10 +55,14 @@ LAYERS = (
     ("results.recorder", "results.table"),
     ("ledger",),
     ("results",),
+    ("hindsight",),
     ("offline",),
     ("evaluation", "simulation", "batch"),
+    ("comparison", "calibration"),
     ("diagnosis",),
     ("causes",),
+    ("tuning",),
+    ("report",),
     ("cli",),
 )
 ROOT_MODULES = ("__init__", "__main__")  # the public names and `python -m tracker`: above all
