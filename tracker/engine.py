@@ -21,6 +21,7 @@ from tracker.lifecycle.rules import Reason
 from tracker.lifecycle.table import TrackTable
 from tracker.log.model import Codes, Floats, Frame, Ints, Kind
 from tracker.motion import motion_model
+from tracker.motion.camera import CameraMotion, CameraStep
 from tracker.results.tracks import TrackState
 from tracker.settings import Settings
 
@@ -63,6 +64,7 @@ class FrameResult:
     considered : (k,) ids of the tracks that were live when the frame was associated.
     prediction : None if the engine does not explain.
     marginals : in joint-probabilistic mode each tier's probabilities, else nothing.
+    camera : what the camera did before this frame, None if that is not looked for or not known.
     """
 
     number: int
@@ -81,6 +83,7 @@ class FrameResult:
     considered: Ints
     prediction: Prediction | None
     marginals: tuple[Marginals, ...]
+    camera: CameraStep | None
 
     def __len__(self) -> int:
         return len(self.track)
@@ -115,6 +118,8 @@ class Engine:
         self.rules = association_rules(self.settings, self.kind)
         self.motion = motion_model(self.settings, self.kind)
         self.table = TrackTable(self.motion.states)
+        moving = self.settings.camera.motion == "estimated" and self.kind is Kind.BOX
+        self.camera = CameraMotion(self.settings.camera) if moving else None
         self.explain = explain
         self.now = -np.inf
         self._birth_score = self.settings.lifecycle.birth_score
@@ -143,6 +148,9 @@ class Engine:
 
         self.motion.predict(table.mean, table.covariance, elapsed)
         variance = self.motion.measurement_variance(frame.z, frame.sigma)
+        camera = None
+        if self.camera is not None:
+            camera = self.camera.follow(table, frame, variance, self.motion.coupled)
         tiers, pairing = associate(
             self.rules, table, frame, variance, self.motion.coupled, self.explain
         )
@@ -180,7 +188,9 @@ class Engine:
         if paired < len(frame):
             born, pairing = self._give_birth(frame, variance, pairing)
             transitions += born
-        return self._result(frame, pairing, transitions, tiers, considered, prediction, marginals)
+        return self._result(
+            frame, pairing, transitions, tiers, considered, prediction, marginals, camera
+        )
 
     def _elapse(self, frame: Frame) -> float:
         elapsed = frame.time - self.now
@@ -294,6 +304,7 @@ class Engine:
         considered: Ints,
         prediction: Prediction | None,
         marginals: tuple[Marginals, ...],
+        camera: CameraStep | None,
     ) -> FrameResult:
         table = self.table
         estimate, rate, covariance = measured_part(
@@ -316,6 +327,7 @@ class Engine:
             considered=considered,
             prediction=prediction,
             marginals=marginals,
+            camera=camera,
         )
 
 

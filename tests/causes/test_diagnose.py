@@ -53,7 +53,7 @@ def test_a_gap_longer_than_coasting_is_a_switch_that_names_the_limit(tmp_path):
     assert switch.cause is Cause.ENDED
     assert switch.measure == pytest.approx(2.1)  # last seen in frame 9, again in frame 30
     assert (switch.before, switch.track, switch.object) == (1, 2, "ada")
-    assert "coasting limit 1.5 s" in switch.words
+    assert "coasting limit 2 s" in switch.words
     (gap,) = found.of(Error.BREAK)
     assert (gap.frame, gap.last_frame, gap.rows) == (10, 29, 20)
 

@@ -20,7 +20,12 @@ CALM = (
     "labels.error_probability=0",
     "clock.seconds=6",
 )
-FITTING = ("measurement.position_sigma=0.035", "measurement.size_sigma=0.045")
+# Noise as it was drawn; the objects turn sharply.
+FITTING = (
+    "measurement.position_sigma=0.035",
+    "measurement.size_sigma=0.045",
+    "motion.acceleration_noise=5.0",
+)
 
 
 def causes(tmp_path, scene, settings):

@@ -37,12 +37,13 @@ def test_the_border():
     assert not gate_of(rule, 0.999, np.nextafter(rule.threshold, 99), None, RECOMPUTED).inside
 
 
+NOISY = "motion.acceleration_noise=5.0"
 JUMP = {n: [(0.05 * n, 0.0)] for n in range(1, 8)} | {8: [(1.4, 0.0)]}
 
 
 def test_a_point_outside(tmp_path):
     """d² and its tail by other means; and the told probability does admit the pair."""
-    run = made_run(tmp_path / "run", made_log(JUMP))
+    run = made_run(tmp_path / "run", made_log(JUMP), NOISY)
     told = explain(run, 8, track=1, others=[0])
     near = told.decisions[0].outside[0]
     gate = near.gate
@@ -64,7 +65,7 @@ def test_a_point_outside(tmp_path):
     assert 1e-9 < gate.tail_needed < 1e-3, "else the scene is no test"
     for factor, admitted in ((1.01, False), (0.99, True)):
         wider = f"gate.probability={1.0 - factor * gate.tail_needed!r}"
-        again = explain(made_run(tmp_path / wider, made_log(JUMP), wider), 8, track=1)
+        again = explain(made_run(tmp_path / wider, made_log(JUMP), wider, NOISY), 8, track=1)
         pairs = [o for o in again.decisions[0].alternatives if o.decision == "pair"]
         assert bool(pairs) is admitted
 
@@ -103,7 +104,8 @@ def test_boxes_outside_both(tmp_path):
 def test_the_nearest_are_named_nearest_first(tmp_path):
     frames = {n: [(0.0, 0.0)] for n in range(1, 6)}
     frames[6] = [(9.0, 0.0), (1.5, 0.0), (0.0, 1.2), (2.0, 0.0), (0.0, -1.9), (0.0, 0.01)]
-    item = explain(made_run(tmp_path / "run", made_log(frames)), 6, track=1).decisions[0]
+    run = made_run(tmp_path / "run", made_log(frames), NOISY)
+    item = explain(run, 6, track=1).decisions[0]
     assert item.detection == 5
     assert [near.detection for near in item.outside] == [2, 1, 4]
     distances = [near.gate.distance for near in item.outside]

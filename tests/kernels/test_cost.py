@@ -35,13 +35,19 @@ def test_likelihood_term_equals_scipys_density():
         sigma = rng.uniform(0.3, 4.0, d)
         innovation = rng.normal(0.0, 1.0, d) * sigma
         density = rng.uniform(1e-4, 1.0)
+        z = rng.uniform(1.0, 50.0, (3, d))
+        scaled = d == 4
         term = likelihood_term(
             np.array([((innovation / sigma) ** 2).sum()]),
             np.array([2.0 * np.log(sigma).sum()]),
-            d,
+            z,
+            np.array([2]),
+            scaled,
             math.log(density),
         )
-        assert term[0] == pytest.approx(twin.likelihood_term(innovation, sigma, density), rel=1e-12)
+        unit = math.sqrt(z[2, 2] * z[2, 3]) if scaled else 1.0
+        expected = twin.likelihood_term(innovation / unit, sigma / unit, density)
+        assert term[0] == pytest.approx(expected, rel=1e-12)
 
 
 def test_label_term():

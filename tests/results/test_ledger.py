@@ -18,7 +18,10 @@ def ledgers(tmp_path_factory):
     log = log.select(np.repeat(np.arange(log.frame_count) < 25, np.diff(log.offsets)))
     out = {}
     for level in ("contested", "full"):
-        associate_log(log, load_settings(None, (f"ledger.level={level}",)), folder / level)
+        settings = load_settings(
+            None, (f"ledger.level={level}", 'cost.terms=["likelihood", "overlap"]')
+        )
+        associate_log(log, settings, folder / level)
         out[level] = pq.read_table(folder / level / "decisions.parquet").to_pandas()
     return out
 
@@ -37,7 +40,8 @@ def test_chosen_pairs_are_one_to_one_in_every_frame(ledgers):
 def test_terms_add_up_to_the_cost(ledgers):
     pairs = ledgers["full"].query("decision == 'pair'")
     paid = -np.log(0.9)
-    np.testing.assert_allclose(pairs.cost, pairs.cost_overlap + paid, atol=1e-12)
+    both = pairs.cost_likelihood + pairs.cost_overlap
+    np.testing.assert_allclose(pairs.cost, both + paid, atol=1e-12)
     np.testing.assert_allclose(pairs.cost_overlap, 8.0 * (0.5 - pairs.overlap), atol=1e-12)
 
 

@@ -25,6 +25,4 @@ def candidate_costs(rule: AssociationRule, pairs: CandidatePairs) -> tuple[Float
 
 
 def _term(name: str, rule: AssociationRule, pairs: CandidatePairs) -> Floats:
-    return evaluate_term(
-        name, pairs, rule.cost, rule.threshold, rule.dimension, rule.log_new_density
-    )
+    return evaluate_term(name, pairs, rule.cost, rule.threshold, rule.boxes, rule.log_new_density)

@@ -80,6 +80,11 @@ class CandidatePairs:
         return self._frame.z[self.detection]
 
     @property
+    def seen(self) -> Floats:
+        """(m, d) all detections of the frame, in filter order; index by `detection`."""
+        return self._frame.z
+
+    @property
     def score(self) -> Floats:
         """(E,) score of the detection, nan if it has none."""
         return self._frame.score[self.detection]

@@ -14,8 +14,10 @@ from tracker.log.model import Kind
 from tracker.results.tracks import TrackState
 from tracker.settings.schema import CostSettings, Settings, TierSettings
 
-# IoU below which boxes are no candidates where nothing but overlap is costed.
-HARDLY_TOUCHING = 0.05
+# IoU below which boxes are no candidates, unless set.
+HARDLY_TOUCHING = 0.1
+# Of new objects and false detections, unless set: per frame and box scale to the fourth.
+BOX_NEW_DENSITY = 0.135
 
 
 @dataclass(frozen=True, slots=True)
@@ -64,10 +66,11 @@ def _rule(settings: Settings, tier: TierSettings, kind: Kind, where: str) -> Ass
     gate_path = f"{where}.gate" if tier.gate else "gate"
     cost_path = f"{where}.cost" if tier.cost else "cost"
     boxes = kind is Kind.BOX
-    terms = tuple(_resolve_term(term, kind, cost.new_density) for term in cost.terms)
+    density = cost.new_density or (BOX_NEW_DENSITY if boxes else None)
+    terms = tuple(_resolve_term(term, density) for term in cost.terms)
     floor = gate.overlap_floor
     if floor is None:
-        floor = HARDLY_TOUCHING if boxes and terms == ("overlap",) else 0.0
+        floor = HARDLY_TOUCHING if boxes else 0.0
     if floor > 0.0 and not boxes:
         raise SettingsError(
             "an overlap floor needs boxes, these are points; set it to 0",
@@ -98,7 +101,7 @@ def _rule(settings: Settings, tier: TierSettings, kind: Kind, where: str) -> Ass
                 "'mahalanobis' is measured against the d² gate, which is switched off",
                 setting=f"{cost_path}.terms",
             )
-    if "likelihood" in terms and cost.new_density is None:
+    if "likelihood" in terms and density is None:
         raise SettingsError(
             "'likelihood' needs the density of new objects and clutter",
             setting=f"{cost_path}.new_density",
@@ -117,7 +120,7 @@ def _rule(settings: Settings, tier: TierSettings, kind: Kind, where: str) -> Ass
         candidate_limit=gate.candidate_limit,
         terms=terms,
         cost=cost,
-        log_new_density=math.log(cost.new_density) if cost.new_density else math.nan,
+        log_new_density=math.log(density) if density else math.nan,
         miss=-math.log1p(-detected * inside),
         paid=-math.log(detected),
         score_from=low,
@@ -127,9 +130,7 @@ def _rule(settings: Settings, tier: TierSettings, kind: Kind, where: str) -> Ass
     )
 
 
-def _resolve_term(term: str, kind: Kind, new_density: float | None) -> str:
+def _resolve_term(term: str, new_density: float | None) -> str:
     if term != "auto":
         return term
-    if kind is Kind.BOX:
-        return "overlap"
     return "mahalanobis" if new_density is None else "likelihood"

@@ -59,7 +59,7 @@ def evaluate_term(
     pairs: CandidatePairs,
     cost: CostSettings,
     threshold: float,
-    dimension: int,
+    boxes: bool,
     log_new_density: float,
 ) -> Floats:
     """(E,) nats of one term.
@@ -71,7 +71,9 @@ def evaluate_term(
     if name == "mahalanobis":
         return mahalanobis_term(pairs.distance, threshold)
     if name == "likelihood":
-        return likelihood_term(pairs.distance, pairs.log_volume, dimension, log_new_density)
+        return likelihood_term(
+            pairs.distance, pairs.log_volume, pairs.seen, pairs.detection, boxes, log_new_density
+        )
     if name == "generalised-overlap":
         settings = cost.generalised_overlap
         overlap = generalised_overlap(pairs.track_state, pairs.measurement)

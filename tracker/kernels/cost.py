@@ -31,14 +31,23 @@ def mahalanobis_term(distance: NDArray[np.float64], threshold: float) -> NDArray
 def likelihood_term(
     distance: NDArray[np.float64],
     log_volume: NDArray[np.float64],
-    dimension: int,
+    z: NDArray[np.float64],
+    column: NDArray[np.int64],
+    scaled: bool,
     log_new_density: float,
 ) -> NDArray[np.float64]:
-    """(E,) ½ d² + ½ ln det(2πS) + ln λ_new (Sittler 1964; Blackman and Popoli 1999)."""
+    """(E,) ½ d² + ½ ln det(2πS) + ln λ_new (Sittler 1964; Blackman and Popoli 1999).
+
+    z : (m, d) detections, column[e] that of pair e.   scaled : whether λ_new counts lengths in
+    box scales, √(w h) of the detection, and not in the log's unit: d of them make a volume.
+    """
+    d = z.shape[1]
     out = np.empty(len(distance))
     for e in range(len(distance)):
-        log_likelihood = -0.5 * (distance[e] + log_volume[e] + dimension * LOG_TWO_PI)
+        log_likelihood = -0.5 * (distance[e] + log_volume[e] + d * LOG_TWO_PI)
         out[e] = log_new_density - log_likelihood
+        if scaled:
+            out[e] -= 0.5 * d * np.log(z[column[e], 2] * z[column[e], 3])
     return out
 
 

@@ -22,6 +22,17 @@ from tracker.results.recorder import Recorder, TrackRows, no_rows
 from tracker.results.table import STATE_WORDS, csv_table, parquet_table
 from tracker.settings import Settings, settings_as_toml
 
+CAMERA_COLUMNS = (
+    "frame",
+    "shift_x",
+    "shift_y",
+    "zoom",
+    "rotation",
+    "centre_x",
+    "centre_y",
+    "evidence",
+    "support",
+)
 EVENT_COLUMNS = ("frame", "time", "track", "from", "to", "reason")
 REASON_WORDS = pa.array([reason.words for reason in Reason])
 REJECTION_COLUMNS = ("line", "column", "reason", "text")
@@ -47,6 +58,7 @@ class RunWriter:
         self._tracks = (folder / "tracks.csv").open("wb")
         self._events = (folder / "events.csv").open("wb")
         self._events.write((",".join(EVENT_COLUMNS) + "\n").encode())
+        self._camera: list[tuple[float, ...]] = []
         self._events_waiting: list[tuple[Ints, Floats, Transitions]] = []
         self._events_written = 0
 
@@ -68,6 +80,8 @@ class RunWriter:
     def add(self, frame: Frame, result: FrameResult) -> None:
         """Take one frame's result in."""
         self._note_events(result)
+        if result.camera is not None:
+            self._camera.append((result.number, *result.camera.values))
         self._ledger.add(frame, result)
         for rows in self._recorder.add(frame, result):
             self._wait(rows)
@@ -80,6 +94,8 @@ class RunWriter:
         self._flush_events()
         self.counts["contested_decisions"] = self._ledger.contested
         self.counts["tracks_confirmed"] = self._recorder.confirmed
+        if self._camera:
+            write_camera(self._folder / "camera.csv", self._camera)
         write_rejections(self._folder / "rejected.csv", self._log.rejections)
         (self._folder / "settings.toml").write_text(
             settings_as_toml(self._settings), encoding="utf-8"
@@ -160,6 +176,15 @@ def _needs_quotes(words: pa.ChunkedArray) -> bool:
         word is not None and any(sign in word for sign in ',"\n\r')
         for word in words.unique().to_pylist()
     )
+
+
+def write_camera(path: Path, steps: list[tuple[float, ...]]) -> None:
+    """camera.csv: how the image moved before each frame in which that is known."""
+    with path.open("w", encoding="utf-8", newline="") as file:
+        rows = csv.writer(file, lineterminator="\n")
+        rows.writerow(CAMERA_COLUMNS)
+        for number, *values in steps:
+            rows.writerow((number, *(f"{value:.7g}" for value in values)))
 
 
 def write_rejections(path: Path, rejections: tuple[Rejection, ...]) -> None:

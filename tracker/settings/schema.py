@@ -68,20 +68,47 @@ class MotionSettings(_Section):
             "box scales (or length units) per s^1.5",
             "Bar-Shalom, Li and Kirubarajan 2001, ch. 6",
         ),
-    ] = 5.0
+    ] = 1.0
     size_noise: Annotated[
         float,
         NonNegative,
         about("The same for width and height", "box scales per s^1.5"),
-    ] = 0.5
+    ] = 0.15
     initial_speed_sigma: Annotated[
         float,
         Positive,
         about("Standard deviation of a new track's velocity", "box scales (or length units) / s"),
-    ] = 2.0
+    ] = 1.5
     initial_size_rate_sigma: Annotated[
         float, Positive, about("Standard deviation of a new track's size rates", "box scales / s")
     ] = 0.2
+
+
+class CameraSettings(_Section):
+    """A camera that moves: boxes only."""
+
+    motion: Annotated[
+        Literal["estimated", "still"],
+        about(
+            "'estimated' finds shift, zoom and rotation of the image from the detections and "
+            "moves the tracks with it, as far as it has seen the camera move; 'still' leaves "
+            "them alone. Points are always still"
+        ),
+    ] = "estimated"
+    reach: Annotated[
+        float,
+        Positive,
+        about("Farthest that an object is looked for beside its prediction", "box scales"),
+    ] = 1.0
+    shift_sigma: Annotated[
+        float, Positive, about("Standard deviation of a jolt's shift", "box scales per frame")
+    ] = 0.3
+    turn_sigma: Annotated[
+        float, Positive, about("The same of its rotation, and of its zoom as a ratio", "radians")
+    ] = 0.02
+    jolt_nats: Annotated[
+        float, NonNegative, about("Evidence at which a jolt is believed at once", "nats")
+    ] = 8.0
 
 
 class MeasurementSettings(_Section):
@@ -96,7 +123,7 @@ class MeasurementSettings(_Section):
     ] = "auto"
     position_sigma: Annotated[
         float, Positive, about("Standard deviation of the centre or point", "see unit")
-    ] = 0.05
+    ] = 0.07
     size_sigma: Annotated[
         float, Positive, about("Standard deviation of width and height", "see unit")
     ] = 0.1
@@ -117,8 +144,8 @@ class GateSettings(_Section):
     overlap_floor: Annotated[
         Annotated[float, Meta(ge=0.0, lt=1.0)] | None,
         about(
-            "Boxes: least IoU of a candidate; 0 switches it off. None is 0.05 where boxes are "
-            "costed by overlap alone, so that boxes that hardly touch are no rivals, else 0"
+            "Boxes: least IoU of a candidate, so that boxes that hardly touch are no rivals; 0 "
+            "switches it off. None is 0.1 for boxes"
         ),
     ] = None
     candidate_limit: Annotated[
@@ -187,7 +214,7 @@ class CostSettings(_Section):
             "Terms that are added: overlap or generalised-overlap (boxes), mahalanobis (half of "
             "d² minus the gate), likelihood (half of d², log-volume of S, new_density), label, "
             "appearance (embedding_* columns), or the name of a registered function; auto is "
-            "overlap for boxes, likelihood for points if new_density is set, else mahalanobis",
+            "likelihood, but mahalanobis for points without new_density",
             "",
             "Sittler 1964; Blackman and Popoli 1999",
         ),
@@ -199,8 +226,9 @@ class CostSettings(_Section):
     new_density: Annotated[
         PositiveFloat | None,
         about(
-            "Density of new objects and clutter in measurement space, needed by likelihood",
-            "per frame and unit volume of measurement space",
+            "Density of new objects and clutter in measurement space, needed by likelihood; none "
+            "is 0.135 for boxes",
+            "per frame and unit of area (points), or box scale to the fourth (boxes)",
         ),
     ] = None
 
@@ -293,7 +321,7 @@ class LifecycleSettings(_Section):
         float,
         NonNegative,
         about("A confirmed track ends once its last detection is older than this", "s"),
-    ] = 1.5
+    ] = 2.0
 
 
 class OutputSettings(_Section):
@@ -343,6 +371,7 @@ class Settings(_Section):
     time: TimeSettings = TimeSettings()
     sensor: SensorSettings = SensorSettings()
     motion: MotionSettings = MotionSettings()
+    camera: CameraSettings = CameraSettings()
     measurement: MeasurementSettings = MeasurementSettings()
     gate: GateSettings = GateSettings()
     cost: CostSettings = CostSettings()
