@@ -15,11 +15,21 @@ from tracker.association.marginals import Marginals, mixture, tier_marginals
 from tracker.association.rule import association_rules
 from tracker.errors import InputError, UsageError
 from tracker.kernels.cost import blend_embeddings
-from tracker.kernels.lifecycle import ENDED, advance, expire, take_over, weigh
+from tracker.kernels.lifecycle import (
+    ENDED,
+    advance,
+    advance_by_evidence,
+    expire,
+    gather_evidence,
+    take_over,
+    weigh,
+)
 from tracker.kernels.snapshot import measured_part
+from tracker.lifecycle.evidence import evidence_test
+from tracker.lifecycle.exits import exits_of
 from tracker.lifecycle.rules import Reason
 from tracker.lifecycle.table import TrackTable
-from tracker.log.model import Codes, Floats, Frame, Ints, Kind
+from tracker.log.model import Codes, Floats, Frame, Ints, Kind, SequenceFacts
 from tracker.motion import motion_model
 from tracker.motion.camera import CameraMotion, CameraStep
 from tracker.results.tracks import TrackState
@@ -99,7 +109,8 @@ class Engine:
 
     Parameters
     ----------
-    settings : all settings.   kind : what is measured.
+    settings : all settings.   kind : what is measured.   facts : of the sequence, for its image
+    size and exit zones.
     explain : whether margins, identity confidence and predictions are kept (they cost a part of
     the association time; decisions are the same without).
 
@@ -111,6 +122,7 @@ class Engine:
         settings: Settings | None = None,
         kind: Kind | str = Kind.BOX,
         *,
+        facts: SequenceFacts | None = None,
         explain: bool = True,
     ) -> None:
         self.settings = settings or Settings()
@@ -123,6 +135,9 @@ class Engine:
         self.explain = explain
         self.now = -np.inf
         self._birth_score = self.settings.lifecycle.birth_score
+        life = self.settings.lifecycle
+        self._test = evidence_test(life) if life.rule == "evidence" else None
+        self._exits = exits_of(facts, self.kind, life.exit_share)
         self._joint = self.settings.association.mode == "joint-probabilistic"
         # Weight of the past in the tracks' embeddings; None if no tier looks at appearance.
         self._memory = next(
@@ -144,13 +159,17 @@ class Engine:
 
         # Tracks past their coasting limit end before they can take a detection.
         late, count = expire(table.last_seen, frame.time, life.coast_seconds)
-        transitions = [self._end(late)] if count else []
+        transitions = [self._end(late, Reason.COAST_LIMIT)] if count else []
 
         self.motion.predict(table.mean, table.covariance, elapsed)
         variance = self.motion.measurement_variance(frame.z, frame.sigma)
         camera = None
         if self.camera is not None:
             camera = self.camera.follow(table, frame, variance, self.motion.coupled)
+        if self._exits is not None:
+            left = self._exits.left(table)
+            if left is not None:
+                transitions.append(self._end(left, Reason.LEFT_VIEW))
         tiers, pairing = associate(
             self.rules, table, frame, variance, self.motion.coupled, self.explain
         )
@@ -167,17 +186,7 @@ class Engine:
         if self._memory is not None and frame.embedding is not None:
             blend_embeddings(table.embedding, pairing, frame.embedding, self._memory)
         paired = take_over(table.score, table.label, pairing, frame.score, frame.label)
-        changed, before, reason, ended = advance(
-            table.state,
-            table.hits,
-            table.age,
-            table.last_seen,
-            table.log_confidence,
-            pairing,
-            frame.time,
-            life.confirm_hits,
-            life.confirm_window,
-        )
+        changed, before, reason, ended = self._advance(tiers, pairing, frame.time)
         if len(changed):
             after = table.state[changed]
             transitions.append(Transitions(considered[changed], before, after, reason))
@@ -218,14 +227,14 @@ class Engine:
                 f"{self.table.embedding.shape[1]}"
             )
 
-    def _end(self, gone: NDArray[np.bool_]) -> Transitions:
+    def _end(self, gone: NDArray[np.bool_], reason: Reason) -> Transitions:
         rows = np.flatnonzero(gone)
         table = self.table
         ended = Transitions(
             table.identity[rows],
             table.state[rows],
             np.full(len(rows), TrackState.ENDED, np.int8),
-            np.full(len(rows), Reason.COAST_LIMIT, np.int8),
+            np.full(len(rows), reason, np.int8),
         )
         if len(rows):
             table.keep(~gone)
@@ -255,6 +264,29 @@ class Engine:
         for tier in tiers:
             weigh(self.table.log_confidence, tier.track, tier.solution.row_margin)
 
+    def _advance(
+        self, tiers: tuple[TierDecision, ...], pairing: Ints, now: float
+    ) -> tuple[Ints, NDArray[np.int8], NDArray[np.int8], int]:
+        """Every track's next state, by hits or by evidence."""
+        table, life = self.table, self.settings.lifecycle
+        columns = (table.state, table.hits, table.age, table.last_seen, table.log_confidence)
+        if self._test is None:
+            return advance(*columns, pairing, now, life.confirm_hits, life.confirm_window)
+        for tier in tiers:
+            problem, answer = tier.problem, tier.solution.answer
+            gather_evidence(
+                table.evidence, tier.track, answer.row_candidate, problem.cost, problem.miss
+            )
+        return advance_by_evidence(
+            *columns,
+            table.evidence,
+            pairing,
+            now,
+            self._test.confirm_at,
+            self._test.drop_at,
+            life.undecided_frames,
+        )
+
     def _give_birth(
         self, frame: Frame, variance: Floats, pairing: Ints
     ) -> tuple[list[Transitions], Ints]:
@@ -269,7 +301,12 @@ class Engine:
         table = self.table
         mean, covariance = self.motion.initiate(frame.z[chosen], variance[chosen])
         identity = table.append(
-            mean, covariance, frame.score[chosen], frame.label[chosen], frame.time
+            mean,
+            covariance,
+            frame.score[chosen],
+            frame.label[chosen],
+            frame.time,
+            0.0 if self._test is None else self._test.start,
         )
         if frame.embedding is not None and self._memory is not None:
             # A new track's mean is the unit vector of its only detection.
@@ -283,7 +320,7 @@ class Engine:
                 np.full(count, Reason.BORN, np.int8),
             )
         ]
-        if self.settings.lifecycle.confirm_hits == 1:
+        if self._test is None and self.settings.lifecycle.confirm_hits == 1:
             table.state[-count:] = TrackState.CONFIRMED
             events.append(
                 Transitions(

@@ -103,7 +103,7 @@ def track_log(log: DetectionLog, settings: Settings | None = None) -> Tracks:
     """
     settings = settings or Settings()
     used = used_detections(log, settings)
-    engine = Engine(settings, log.kind, explain=False)
+    engine = Engine(settings, log.kind, facts=log.facts, explain=False)
     recorder = Recorder(settings, log.kind)
     parts: list[TrackRows] = []
     for frame in frames_of(used, settings):
@@ -139,7 +139,7 @@ def associate_log(
     """
     began = time.perf_counter()
     used = used_detections(log, settings)
-    engine = Engine(settings, log.kind)
+    engine = Engine(settings, log.kind, facts=log.facts)
     proofs = ProofSummary()
     total = frame_total(used, settings)
     seconds = np.zeros(total)

@@ -7,7 +7,14 @@ import numpy as np
 import pytest
 
 from tests.reference import lifecycle as twin
-from tracker.kernels.lifecycle import advance, expire, take_over, weigh
+from tracker.kernels.lifecycle import (
+    advance,
+    advance_by_evidence,
+    expire,
+    gather_evidence,
+    take_over,
+    weigh,
+)
 from tracker.lifecycle.rules import Reason
 from tracker.results.tracks import TrackState
 
@@ -65,6 +72,38 @@ def test_initiation_probability_is_the_binomial_sum(m, n, probability):
         assert "confirmed" in states
         total += weight
     assert total == pytest.approx(probability, abs=1e-9)
+
+
+@pytest.mark.parametrize("seed", range(40))
+def test_every_walk_of_evidence_as_the_twin_tells_it(seed):
+    rng = np.random.default_rng(seed)
+    state, hits, age = np.zeros(1, np.int8), np.array([1]), np.array([1])
+    seen, confidence, evidence = np.zeros(1), np.array([-1.0]), np.zeros(1)
+    told = ("tentative", 1, 0.0)
+    for frame in range(12):
+        paired = bool(rng.random() < 0.6)
+        gain = rng.normal(1.0 if paired else -1.5, 1.5)
+        evidence += gain
+        changed, _, reasons, ended = advance_by_evidence(
+            state, hits, age, seen, confidence, evidence,
+            np.array([0 if paired else -1]), frame + 1.0, 4.0, -3.0, 9,
+        )  # fmt: skip
+        told = twin.advance_by_evidence(told[0], told[1], paired, told[2] + gain, 4.0, -3.0, 9)
+        reason = Reason(reasons[0]).words if len(changed) else "unchanged"
+        assert (TrackState(state[0]).word, reason) == (told[0], told[3])
+        assert evidence[0] == pytest.approx(told[2])
+        told = told[:3]
+        assert ended == (told[0] == "ended")
+        if ended:
+            break
+
+
+def test_evidence_is_what_the_decisions_cost():
+    evidence = np.array([1.0, 2.0, 3.0])
+    chosen, cost, miss = np.array([1, -1]), np.array([9.0, -4.0]), np.array([2.3, 1.5])
+    expected = twin.gather_evidence(evidence, [2, 0], chosen, cost, miss)
+    gather_evidence(evidence, np.array([2, 0]), chosen, cost, miss)
+    assert evidence.tolist() == expected == [-0.5, 2.0, 7.0]
 
 
 def test_expiry_is_not_decided_by_rounding():

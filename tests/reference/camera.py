@@ -53,7 +53,8 @@ def estimate_camera(mean, covariance, rows, z, variance, prior):
         1.0
         / np.array([prior.shift_sigma * unit] * 2 + [prior.zoom_sigma, prior.rotation_sigma]) ** 2
     )
-    found = offset[near]  # row by row, as pairs are numbered
+    by_offset = [sorted(offset[k][near[k]].tolist()) for k in range(len(rows))]
+    found = np.array([o for row in by_offset for o in row]).reshape(-1, 2)
     tried = min(len(found), 64)
     shifts = [np.zeros(2)] + [found[h * len(found) // tried] for h in range(tried)]
     worth = [

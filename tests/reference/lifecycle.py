@@ -23,6 +23,31 @@ def advance(state, hits, age, paired, confirm_hits, confirm_window):
     return "coasting", hits, age, "missed" if state == "confirmed" else "unchanged"
 
 
+def advance_by_evidence(state, age, paired, evidence, confirm_at, drop_at, undecided_frames):
+    """(next state, age, evidence, reason) of one track; `evidence` is that after the frame."""
+    age += 1
+    kept = min(evidence, confirm_at)
+    if evidence <= drop_at:
+        return "ended", age, kept, "evidence gone"
+    if state == "tentative":
+        if paired and evidence >= confirm_at:
+            return "confirmed", age, kept, "evidence reached"
+        if age >= undecided_frames:
+            return "ended", age, kept, "undecided"
+        return "tentative", age, kept, "unchanged"
+    if paired:
+        return "confirmed", age, kept, "found again" if state == "coasting" else "unchanged"
+    return "coasting", age, kept, "missed" if state == "confirmed" else "unchanged"
+
+
+def gather_evidence(evidence, rows, row_candidate, cost, miss):
+    """The tracks' evidence after a tier."""
+    out = list(evidence)
+    for k, i in enumerate(rows):
+        out[i] -= miss[k] if row_candidate[k] < 0 else cost[row_candidate[k]]
+    return out
+
+
 def take_over(score, label, pairing, detection_score, detection_label):
     """(scores, labels) of the tracks after taking them over from their detections."""
     new_score, new_label = list(score), list(label)

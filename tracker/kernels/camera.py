@@ -169,7 +169,8 @@ def _near_pairs(
 ) -> _Pairs:
     """Box and detection within reach and of about the same size.
 
-    The likelihood of an offset is normal, against an outlier that may be anywhere within reach.
+    Those of a box are in order of their offset, whatever the order of detections. The likelihood
+    of an offset is normal, against an outlier that may be anywhere within reach.
     """
     start = np.zeros(len(rows) + 1, np.int64)
     room = 4 * len(rows) + 16
@@ -194,11 +195,15 @@ def _near_pairs(
                 offset, spread, level = _grown(offset, spread, level, room)
             sx = covariance[i, 0, 0] + variance[j, 0]
             sy = covariance[i, 1, 1] + variance[j, 1]
-            offset[count, 0] = dx
-            offset[count, 1] = dy
-            spread[count, 0] = sx
-            spread[count, 1] = sy
-            level[count] = (
+            at = count
+            while at > start[k] and offset[at - 1, 0] > dx:
+                offset[at], spread[at], level[at] = offset[at - 1], spread[at - 1], level[at - 1]
+                at -= 1
+            offset[at, 0] = dx
+            offset[at, 1] = dy
+            spread[at, 0] = sx
+            spread[at, 1] = sy
+            level[at] = (
                 np.log((1.0 - prior.outlier_share) / prior.outlier_share)
                 + np.log(np.pi * reach * reach)
                 - LOG_TWO_PI

@@ -20,6 +20,10 @@ MISSED = 3
 FOUND_AGAIN = 4
 HITS_OUT_OF_REACH = 5
 COAST_LIMIT = 6
+EVIDENCE_REACHED = 7
+EVIDENCE_GONE = 8
+UNDECIDED = 9
+LEFT_VIEW = 10
 
 # Times are seconds of a clock; a limit is not missed by rounding in the last digits.
 CLOCK_SLACK_SECONDS = 1e-6
@@ -90,6 +94,83 @@ def advance(
             reason[count] = why
             count += 1
     return changed[:count], before[:count], reason[:count], ended
+
+
+@njit(cache=True)
+def advance_by_evidence(
+    state: NDArray[np.int8],
+    hits: NDArray[np.int64],
+    age: NDArray[np.int64],
+    last_seen: NDArray[np.float64],
+    log_confidence: NDArray[np.float64],
+    evidence: NDArray[np.float64],
+    pairing: NDArray[np.int64],
+    now: float,
+    confirm_at: float,
+    drop_at: float,
+    undecided_frames: int,
+) -> tuple[NDArray[np.int64], NDArray[np.int8], NDArray[np.int8], int]:
+    """As `advance`, by Wald's sequential test on the log-odds that there is an object.
+
+    evidence : (n,) log-odds after this frame; capped at `confirm_at` in place, so that what was
+    seen long ago does not keep alive what is gone.   confirm_at, drop_at : thresholds in nats.
+    """
+    changed = np.empty(len(state), np.int64)
+    before = np.empty(len(state), np.int8)
+    reason = np.empty(len(state), np.int8)
+    count = 0
+    ended = 0
+    for i in range(len(state)):
+        age[i] += 1
+        was = state[i]
+        why = UNCHANGED
+        paired = pairing[i] >= 0
+        if paired:
+            hits[i] += 1
+            last_seen[i] = now
+        if evidence[i] <= drop_at:
+            state[i] = ENDED
+            why = EVIDENCE_GONE
+        elif was == TENTATIVE and evidence[i] >= confirm_at and paired:
+            state[i] = CONFIRMED
+            why = EVIDENCE_REACHED
+            log_confidence[i] = 0.0
+        elif was == TENTATIVE and age[i] >= undecided_frames:
+            state[i] = ENDED
+            why = UNDECIDED
+        elif was == COASTING and paired:
+            state[i] = CONFIRMED
+            why = FOUND_AGAIN
+        elif was == CONFIRMED and not paired:
+            state[i] = COASTING
+            why = MISSED
+        evidence[i] = min(evidence[i], confirm_at)
+        if state[i] == ENDED:
+            ended += 1
+        if why != UNCHANGED:
+            changed[count] = i
+            before[count] = was
+            reason[count] = why
+            count += 1
+    return changed[:count], before[:count], reason[:count], ended
+
+
+@njit(cache=True)
+def gather_evidence(
+    evidence: NDArray[np.float64],
+    rows: NDArray[np.int64],
+    row_candidate: NDArray[np.int64],
+    cost: NDArray[np.float64],
+    miss: NDArray[np.float64],
+) -> None:
+    """Add what a tier's decisions say for each track, in place: minus its cost or its miss cost.
+
+    evidence : (n,).   rows : (k,) table rows.   row_candidate : (k,) chosen candidate, -1 for
+    none.   cost : (E,), miss : (k,) in nats.
+    """
+    for k in range(len(rows)):
+        e = row_candidate[k]
+        evidence[rows[k]] -= cost[e] if e >= 0 else miss[k]
 
 
 @njit(cache=True)

@@ -24,6 +24,7 @@ class TrackTable:
     score: Floats  # (n,) score of the last detection
     label: Codes  # (n,) label of the first detection that had one
     log_confidence: Floats  # (n,) natural log of the identity confidence
+    evidence: Floats  # (n,) log-odds that there is an object, nats; 0 where hits decide
     mean: Floats  # (n, s)
     covariance: Floats  # (n, s, s)
     embedding: NDArray[np.float32]  # (n, k) running mean, k = 0 if appearance is not used
@@ -37,6 +38,7 @@ class TrackTable:
         "score",
         "label",
         "log_confidence",
+        "evidence",
         "mean",
         "covariance",
         "embedding",
@@ -54,6 +56,7 @@ class TrackTable:
             "score": np.empty(0),
             "label": np.empty(0, np.int32),
             "log_confidence": np.empty(0),
+            "evidence": np.empty(0),
             "mean": np.empty((0, states)),
             "covariance": np.empty((0, states, states)),
             "embedding": np.empty((0, 0), np.float32),
@@ -74,7 +77,13 @@ class TrackTable:
         self._refresh()
 
     def append(
-        self, mean: Floats, covariance: Floats, score: Floats, label: Codes, now: float
+        self,
+        mean: Floats,
+        covariance: Floats,
+        score: Floats,
+        label: Codes,
+        now: float,
+        evidence: float = 0.0,
     ) -> Ints:
         """Add tentative tracks; returns their new ids."""
         first, last = self._count, self._count + len(mean)
@@ -90,6 +99,7 @@ class TrackTable:
             "score": score,
             "label": label,
             "log_confidence": 0.0,
+            "evidence": evidence,
             "mean": mean,
             "covariance": covariance,
             "embedding": 0.0,

@@ -7,6 +7,8 @@ import tomllib
 from pathlib import Path
 from typing import Any
 
+import shapely
+
 from tracker.errors import InputError
 from tracker.log.model import SequenceFacts
 
@@ -46,6 +48,7 @@ def read_facts(log: Path) -> SequenceFacts:
         if frames != int(frames):
             raise _wrong(path, "frames", values["frames"], "a whole number greater than 0")
         facts["frames"] = int(frames)
+    facts["exit_zones"] = tuple(_zone(path, zone) for zone in _list(path, values))
     return SequenceFacts(**facts)
 
 
@@ -55,6 +58,25 @@ def name_of(log: Path, facts: SequenceFacts) -> str:
         return facts.name
     folder = log.absolute().parent.name
     return folder if log.stem in GENERIC_STEMS and folder else log.stem
+
+
+def _list(path: Path, values: dict[str, Any]) -> list[Any]:
+    zones = values.get("exit_zones", [])
+    if not isinstance(zones, list):
+        raise _wrong(path, "exit_zones", zones, "a list of polygons, [[x, y], [x, y], [x, y], …]")
+    return zones
+
+
+def _zone(path: Path, zone: Any) -> tuple[tuple[float, float], ...]:
+    """A polygon of three corners or more, that does not cross itself."""
+    expected = "polygons of three corners [x, y] or more that do not cross themselves"
+    try:
+        corners = tuple((float(x), float(y)) for x, y in zone)
+    except (TypeError, ValueError):
+        raise _wrong(path, "exit_zones", zone, expected) from None
+    if len(corners) < 3 or not shapely.Polygon(corners).is_valid:
+        raise _wrong(path, "exit_zones", zone, expected)
+    return corners
 
 
 def _text(path: Path, key: str, value: Any) -> str:

@@ -56,6 +56,7 @@ class SequenceFacts:
     image_width: float | None = None
     image_height: float | None = None
     sensor: str | None = None
+    exit_zones: tuple[tuple[tuple[float, float], ...], ...] = ()  # polygons, in order of corners
 
 
 @dataclass(frozen=True, slots=True)

@@ -30,6 +30,7 @@ LEAST_OBJECTS = 3  # fewer tracks or detections say nothing
 MOST_OBJECTS = 32  # of more tracks than that, so many are drawn
 LEAST_SUPPORT = 2.0  # agreeing objects below which nothing is learned
 MEMORY = 0.9  # weight of the past in what the camera is known to do, at each frame
+GOLDEN_RATIO = 0.6180339887498949  # its multiples are spread evenly (Knuth 1998, 6.4)
 STILL = 0.01  # a camera is never thought stiller than this share of a jolt's sigmas
 
 
@@ -99,9 +100,14 @@ class CameraMotion:
 
     @staticmethod
     def _reliable(table: TrackTable, now: float) -> Ints:
-        """Rows of tracks that were seen more than once, and lately; evenly drawn if many."""
+        """Rows of tracks that were seen more than once, and lately; a part of them if many.
+
+        Which, and in what order, depends on where they are and not on their ids, so that nothing
+        depends on the order of detections in a frame or on the unit of length.
+        """
         fresh = now - table.last_seen <= FRESH_SECONDS
         rows = np.flatnonzero((table.hits > 1) & fresh)
         if len(rows) > MOST_OBJECTS:
-            rows = rows[np.arange(MOST_OBJECTS) * len(rows) // MOST_OBJECTS]
-        return rows
+            lot = np.abs(table.mean[rows, 0] / table.mean[rows, 3]) * GOLDEN_RATIO % 1.0
+            rows = rows[np.argpartition(lot, MOST_OBJECTS)[:MOST_OBJECTS]]
+        return rows[np.argsort(table.mean[rows, 0], kind="stable")]

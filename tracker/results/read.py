@@ -42,7 +42,7 @@ def read_run(folder: str | Path) -> Tracks:
     try:
         table = pq.read_table(path)
         kind = Kind(facts["kind"])
-        sequence = SequenceFacts(**facts["sequence"])
+        sequence = _sequence(facts["sequence"])
         z = np.column_stack([_floats(table[name]) for name in kind.columns])
     except (OSError, KeyError, ValueError, TypeError) as error:
         raise InputError(f"cannot be read as a run: {error}", path=path) from None
@@ -64,6 +64,14 @@ def read_run(folder: str | Path) -> Tracks:
         state=np.array([state_codes[word] for word in table["state"].to_pylist()], np.int8),
         reported=table["reported"].to_numpy().astype(np.bool_),
         line=table["line"].fill_null(-1).to_numpy(),
+    )
+
+
+def _sequence(facts: dict[str, Any]) -> SequenceFacts:
+    """JSON has lists where facts have tuples."""
+    zones = facts.get("exit_zones", ())
+    return SequenceFacts(
+        **facts | {"exit_zones": tuple(tuple((x, y) for x, y in zone) for zone in zones)}
     )
 
 

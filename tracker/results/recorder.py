@@ -78,7 +78,8 @@ class Recorder:
     def __init__(self, settings: Settings, kind: Kind) -> None:
         position = settings.output.position
         self._show_detected = kind is Kind.BOX if position == "auto" else position == "detected"
-        self._wait = settings.lifecycle.confirm_window
+        life = settings.lifecycle
+        self._wait = life.confirm_window if life.rule == "hits" else life.undecided_frames
         self._early = settings.output.report_before_confirmation
         self._coasting_seconds = settings.output.report_coasting_seconds
         self._held: deque[TrackRows] = deque()

@@ -8,25 +8,21 @@ from __future__ import annotations
 
 from typing import Annotated, Literal
 
-from msgspec import Meta, Struct
+from msgspec import Meta
 
-Positive = Meta(gt=0.0)
-NonNegative = Meta(ge=0.0)
-Probability = Meta(gt=0.0, lt=1.0)
-PositiveFloat = Annotated[float, Positive]
-ProbabilityFloat = Annotated[float, Probability]
-
-
-def about(meaning: str, unit: str = "", source: str = "") -> Meta:
-    """What `--print-settings` says about one setting."""
-    return Meta(description=meaning, extra={"unit": unit, "source": source})
-
-
-class _Section(Struct, frozen=True, forbid_unknown_fields=True, kw_only=True):
-    """Base of all sections: immutable, no unknown names."""
+from tracker.settings.fields import (
+    NonNegative,
+    Positive,
+    PositiveFloat,
+    Probability,
+    ProbabilityFloat,
+    Section,
+    about,
+)
+from tracker.settings.lifecycle import LifecycleSettings
 
 
-class TimeSettings(_Section):
+class TimeSettings(Section):
     """How frame numbers become seconds."""
 
     frame_rate_hz: Annotated[
@@ -42,7 +38,7 @@ class TimeSettings(_Section):
     ] = "not-scanned"
 
 
-class SensorSettings(_Section):
+class SensorSettings(Section):
     """What is known of the detector."""
 
     detection_probability: Annotated[
@@ -53,7 +49,7 @@ class SensorSettings(_Section):
     ] = None
 
 
-class MotionSettings(_Section):
+class MotionSettings(Section):
     """Constant velocity driven by continuous white-noise acceleration.
 
     For boxes all three are in box scales (square root of width times height), so that near and
@@ -84,7 +80,7 @@ class MotionSettings(_Section):
     ] = 0.2
 
 
-class CameraSettings(_Section):
+class CameraSettings(Section):
     """A camera that moves: boxes only."""
 
     motion: Annotated[
@@ -111,7 +107,7 @@ class CameraSettings(_Section):
     ] = 8.0
 
 
-class MeasurementSettings(_Section):
+class MeasurementSettings(Section):
     """Noise of one detection, where the log has no sigma_* columns."""
 
     unit: Annotated[
@@ -129,7 +125,7 @@ class MeasurementSettings(_Section):
     ] = 0.1
 
 
-class GateSettings(_Section):
+class GateSettings(Section):
     """Which pairs are considered at all."""
 
     probability: Annotated[
@@ -155,7 +151,7 @@ class GateSettings(_Section):
     ] = 50_000_000
 
 
-class OverlapSettings(_Section):
+class OverlapSettings(Section):
     """IoU as evidence: cost = nats x (neutral - IoU)."""
 
     nats: Annotated[
@@ -166,7 +162,7 @@ class OverlapSettings(_Section):
     ] = 0.5
 
 
-class GeneralisedOverlapSettings(_Section):
+class GeneralisedOverlapSettings(Section):
     """Generalised IoU, from -1 to 1, as evidence: cost = nats x (neutral - GIoU)."""
 
     nats: Annotated[
@@ -177,7 +173,7 @@ class GeneralisedOverlapSettings(_Section):
     ] = 0.3
 
 
-class LabelSettings(_Section):
+class LabelSettings(Section):
     """Labels as evidence; a detection or track without label says nothing."""
 
     agree_nats: Annotated[
@@ -188,7 +184,7 @@ class LabelSettings(_Section):
     ] = 3.0
 
 
-class AppearanceSettings(_Section):
+class AppearanceSettings(Section):
     """Cosine similarity of embeddings as evidence: cost = nats x (neutral - cosine)."""
 
     nats: Annotated[
@@ -204,7 +200,7 @@ class AppearanceSettings(_Section):
     ] = 0.9
 
 
-class CostSettings(_Section):
+class CostSettings(Section):
     """What a pair costs, in nats: minus the log-likelihood ratio of 'same' against 'new'."""
 
     terms: Annotated[
@@ -236,7 +232,7 @@ class CostSettings(_Section):
 EXACT_LIMIT_MOST = 18  # time and memory double with each: some tenths of a second there
 
 
-class AssociationSettings(_Section):
+class AssociationSettings(Section):
     """What corrects a track: its own detection, or all that might be its own.
 
     Joint-probabilistic mode weighs all joint events of a frame (Fortmann, Bar-Shalom and Scheffe
@@ -283,7 +279,7 @@ class AssociationSettings(_Section):
 StateName = Literal["tentative", "confirmed", "coasting"]
 
 
-class TierSettings(_Section):
+class TierSettings(Section):
     """One pass of association over what earlier passes left unpaired.
 
     Confident detections first and weak ones only to keep tracks alive is hysteresis: a high
@@ -304,27 +300,7 @@ class TierSettings(_Section):
     cost: Annotated[CostSettings | None, about("Cost of this tier; none is [cost]")] = None
 
 
-class LifecycleSettings(_Section):
-    """Birth, confirmation, coasting, end."""
-
-    birth_score: Annotated[
-        float | None,
-        about("An unpaired detection scored at or above this starts a track", "score"),
-    ] = None
-    confirm_hits: Annotated[
-        int, Meta(ge=1, le=64), about("M: detections that confirm a track", "detections")
-    ] = 2
-    confirm_window: Annotated[
-        int, Meta(ge=1, le=64), about("N: frames since birth within which they count", "frames")
-    ] = 3
-    coast_seconds: Annotated[
-        float,
-        NonNegative,
-        about("A confirmed track ends once its last detection is older than this", "s"),
-    ] = 2.0
-
-
-class OutputSettings(_Section):
+class OutputSettings(Section):
     """Which rows of tracks.csv count as reported, and what they say."""
 
     position: Annotated[
@@ -346,7 +322,7 @@ class OutputSettings(_Section):
     ] = 0.0
 
 
-class LedgerSettings(_Section):
+class LedgerSettings(Section):
     """What decisions.parquet keeps."""
 
     level: Annotated[
@@ -365,7 +341,7 @@ class LedgerSettings(_Section):
     ] = 2.3
 
 
-class Settings(_Section):
+class Settings(Section):
     """All settings of a run. `Settings()` is the documented default."""
 
     time: TimeSettings = TimeSettings()

@@ -10,7 +10,7 @@ from typing import Annotated
 from msgspec import Meta, Struct
 
 from tracker.errors import UsageError
-from tracker.settings.schema import NonNegative, Positive, about
+from tracker.settings.fields import NonNegative, Positive, about
 
 Share = Meta(ge=0.0, le=1.0)
 ArrivalRate = Meta(gt=0.0, le=3000.0)  # a minute

@@ -50,7 +50,9 @@ def facts_toml(sequence: SimulatedSequence, made_by: str) -> str:
     """sequence.toml: what is known of the sequence, and how it was made."""
     facts = sequence.facts
     known = {name: getattr(facts, name) for name in facts.__slots__}
-    lines = [f"{name} = {_value(value)}" for name, value in known.items() if value is not None]
+    lines = [
+        f"{name} = {_value(value)}" for name, value in known.items() if value not in (None, ())
+    ]
     defaults = SCENES[sequence.scene].settings
     how = {
         "scene": sequence.scene,

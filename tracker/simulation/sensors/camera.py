@@ -8,7 +8,7 @@ import numpy as np
 
 from tracker.errors import UsageError
 from tracker.log.model import Floats, Kind, SequenceFacts, box_centre, box_corner
-from tracker.settings.schema import about
+from tracker.settings.fields import about
 from tracker.simulation.layout import detection_columns, truth_columns
 from tracker.simulation.sensors.clutter import (
     ClutterSettings,

@@ -8,7 +8,7 @@ import numpy as np
 from msgspec import Meta
 
 from tracker.log.model import Codes, Floats, Ints
-from tracker.settings.schema import NonNegative, Positive, about
+from tracker.settings.fields import NonNegative, Positive, about
 from tracker.simulation.settings import Section, Share, check_rows
 from tracker.simulation.streams import Streams
 

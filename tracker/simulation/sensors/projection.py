@@ -13,7 +13,7 @@ import numpy as np
 from msgspec import Meta
 
 from tracker.log.model import Floats
-from tracker.settings.schema import Positive, about
+from tracker.settings.fields import Positive, about
 from tracker.simulation.settings import Section
 
 NEAREST_DEPTH_M = 1.0  # nothing nearer to the camera's plane is projected

@@ -9,7 +9,7 @@ from msgspec import Meta
 
 from tracker.errors import UsageError
 from tracker.log.model import Floats, Kind, SequenceFacts
-from tracker.settings.schema import NonNegative, Positive, about
+from tracker.settings.fields import NonNegative, Positive, about
 from tracker.simulation.layout import detection_columns, truth_columns
 from tracker.simulation.sensors.clutter import clutter_frames, clutter_labels
 from tracker.simulation.sensors.conversion import debiased

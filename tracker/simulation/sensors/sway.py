@@ -7,7 +7,7 @@ from typing import Annotated
 import numpy as np
 
 from tracker.log.model import Floats
-from tracker.settings.schema import NonNegative, Positive, about
+from tracker.settings.fields import NonNegative, Positive, about
 from tracker.simulation.sensors.projection import CameraSettings, Pose
 from tracker.simulation.settings import Section
 from tracker.simulation.streams import Streams

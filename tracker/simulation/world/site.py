@@ -7,7 +7,7 @@ from typing import Annotated
 import numpy as np
 from msgspec import Meta
 
-from tracker.settings.schema import NonNegative, Positive, about
+from tracker.settings.fields import NonNegative, Positive, about
 from tracker.simulation.settings import ArrivalRate, Section, Share, WarmUp
 
 

@@ -14,7 +14,7 @@ from msgspec import Meta
 from numpy.typing import NDArray
 
 from tracker.log.model import Codes, Floats, Ints
-from tracker.settings.schema import NonNegative, Positive, about
+from tracker.settings.fields import NonNegative, Positive, about
 from tracker.simulation.settings import ArrivalRate, Section, Share, WarmUp
 from tracker.simulation.streams import Streams, poisson_times
 from tracker.simulation.world.movement import Movement, Recorder
