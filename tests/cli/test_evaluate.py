@@ -41,7 +41,9 @@ def test_table_and_caution(capsys):
     assert code == 0
     assert "52.6%" in out
     assert "55.8%" in out
-    assert "MOTP is a distance" in err
+    assert "MOTP is a mean distance" in err
+    # CHECKS: TUD-Campus has 13 false positives, 150 misses, 7 switches, 7 fragmentations.
+    assert out.splitlines()[-1].split()[-4:] == ["13", "150", "7", "7"]
     assert "personal data" in err
 
 
@@ -83,8 +85,10 @@ def test_truth_of_several_sequences(form, capsys, tmp_path):
 def test_table_of_several_has_an_overall_line(capsys):
     truths = ("--truth", CAMPUS / "gt.txt", "--truth", STADTMITTE / "gt.txt")
     _, out, _ = evaluated(capsys, *BOTH, *truths)
-    assert out.splitlines()[-1].startswith("OVERALL")
-    assert "55.5%" in out.splitlines()[-1]
+    ratios, counts = (part.splitlines() for part in out.split("\n\n"))
+    assert ratios[-1].startswith("OVERALL")
+    assert "55.5%" in ratios[-1]
+    assert counts[-1].startswith("OVERALL")
 
 
 def test_a_truth_named_as_its_sequence(capsys, tmp_path, monkeypatch):
@@ -103,6 +107,19 @@ def test_points(capsys, tmp_path):
     code, _, err = evaluated(capsys, tracks, "--truth", truth)
     assert code == 2
     assert "--distance-threshold" in err
+
+
+def test_an_empty_truth_makes_every_track_row_false(capsys, tmp_path):
+    truth = files.save(tmp_path, "frame,object,left,top,width,height\n", "truth.csv")
+    tracks = files.save(
+        tmp_path, "frame,track,left,top,width,height\n1,1,0,0,9,9\n2,1,0,0,9,9\n", "tracks.csv"
+    )
+    choices = ("--per-class", "--visibility-floor", 0.5, "--score-class", "person")
+    found = scores(capsys, tracks, "--truth", truth, *choices)["overall"]
+    assert (found["false_positives"], found["misses"], found["objects"]) == (2, 0, 0)
+    assert (found["precision"], found["recall"], found["mota"]) == (0.0, None, None)
+    _, _, err = evaluated(capsys, tracks, "--truth", truth)
+    assert "nothing was there to be tracked" in err
 
 
 def test_classes(capsys, tmp_path):
@@ -153,6 +170,7 @@ def test_coasting(capsys, tmp_path):
         (["{here}", "--truth", "{gt}"], "neither a run folder nor a folder of them"),
         (["{test}", "--truth", "{here}"], "no truth for the sequence 'test'"),
         (["{test}", "--truth", "{points}"], "the tracks are boxes, the truth points"),
+        (["{test}", "--truth", "tset={gt}"], "there is no sequence 'tset' here (test)"),
     ],
 )
 def test_wrong_use_is_a_sentence_and_exit_code_2(words, sentence, capsys, tmp_path):

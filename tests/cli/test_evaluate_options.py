@@ -53,7 +53,8 @@ def test_what_is_scored(capsys, pair, tmp_path):
 def test_per_class(capsys, pair):
     assert run(["evaluate", *pair, "--per-class"]) == 0
     out = capsys.readouterr().out
-    assert [line.split("  ")[0] for line in out.splitlines()[2:]] == [
+    ratios = out.split("\n\n")[0].splitlines()
+    assert [line.split("  ")[0] for line in ratios[2:]] == [
         "quay", "class cart", "class person",
     ]  # fmt: skip
     assert run(["evaluate", *pair, "--per-class", "--json"]) == 0
@@ -73,15 +74,14 @@ def test_a_truth_of_something_else_is_noted(capsys):
 def test_details(capsys):
     assert run(["evaluate", *WORDS, "--details"]) == 0
     out, err = capsys.readouterr()
-    second = out.split("\n\n")[1].splitlines()
-    assert second[0].split() == [
-        "sequence", "LocA", "GOSPA", "localis.", "missed", "false", "OSPA", "length", "delay",
-        "gaps", "recovery", "lost",
+    _, _, distances, durations, thresholds = (part.splitlines() for part in out.split("\n\n"))
+    assert distances[0].split() == [
+        "sequence", "LocA", "GOSPA", "localisation", "missed", "false", "OSPA",
     ]  # fmt: skip
-    assert second[2].startswith("test ")
-    third = out.split("\n\n")[2].splitlines()
-    assert third[0].split() == ["similarity", "HOTA", "DetA", "AssA", "LocA"]
-    assert [line.split()[0] for line in third[1:20]] == [f"{k / 20:.2f}" for k in range(1, 20)]
+    assert durations[0].split() == ["sequence", "length", "delay", "gaps", "recovery", "lost"]
+    assert distances[2].startswith("test ")
+    assert thresholds[0].split() == ["similarity", "HOTA", "DetA", "AssA", "LocA"]
+    assert [line.split()[0] for line in thresholds[1:20]] == [f"{k / 20:.2f}" for k in range(1, 20)]
     assert "GOSPA and OSPA" in err
 
 
@@ -137,3 +137,38 @@ def test_consistency(capsys, tmp_path):
     assert set(checks) == {"nees", "nis"}
     assert run(["evaluate", *WORDS, "--consistency"]) == 2
     assert "--consistency needs run folders" in capsys.readouterr().err
+
+
+def test_rejected_truth_is_listed_and_strict_stops(capsys, tmp_path):
+    truth = files.save(
+        tmp_path,
+        "frame,object,left,top,width,height\n1,a,0,0,10,20\n1,a,5,0,10,20\n2,a,0,0,-1,20\n",
+        "truth.csv",
+    )
+    tracks = files.save(
+        tmp_path, "frame,track,left,top,width,height\n1,1,0,0,10,20\n", "tracks.csv"
+    )
+    words = ["evaluate", str(tracks), "--truth", str(truth)]
+    assert run(words) == 0
+    err = capsys.readouterr().err
+    assert "2 rows of" in err
+    assert "line 3, column 'object': 'a' is in this frame already" in err
+    assert "line 4, column 'width': must be greater than 0 (found '2,a,0,0,-1,20')" in err
+    assert run([*words, "--strict"]) == 2
+    assert "2 rows were rejected" in capsys.readouterr().err
+
+
+@pytest.mark.parametrize(
+    ("words", "sentence"),
+    [
+        (["--per-class"], "no truth has a column 'label'"),
+        (["--visibility-floor", "0.5"], "no truth"),
+    ],
+)
+def test_choices_that_no_truth_can_follow(words, sentence, capsys, tmp_path):
+    truth = files.save(tmp_path, "frame,object,left,top,width,height\n1,a,0,0,10,20\n", "truth.csv")
+    tracks = files.save(
+        tmp_path, "frame,track,left,top,width,height\n1,1,0,0,10,20\n", "tracks.csv"
+    )
+    assert run(["evaluate", str(tracks), "--truth", str(truth), *words]) == 2
+    assert sentence in capsys.readouterr().err

@@ -178,3 +178,17 @@ def test_ids_beyond_what_a_float_holds_stay_apart(tmp_path):
     assert truth.object_names == tuple(map(str, ids))
     assert truth.rejections == ()
     assert truth.object.tolist() == [0, 1, 2] * 2
+
+
+@pytest.mark.parametrize("header", ["frame,object,x,y\n", "time,object,x,y,label,visibility\n"])
+def test_a_truth_with_a_header_alone_says_that_there_was_nothing(tmp_path, header):
+    truth = read_truth(files.save(tmp_path, header, "truth.csv"), strict=True)
+    assert (len(truth), truth.object_names, truth.labels) == (0, (), ())
+    assert truth.kind is Kind.POINT
+    assert "nothing was there" in truth.notes[0]
+    with pytest.raises(InputError, match="the file is empty"):
+        read_truth(files.save(tmp_path, "", "nothing.csv"))
+    with pytest.raises(InputError, match="has no identities"):
+        read_truth(files.save(tmp_path, "frame,x,y\n", "detections.csv"))
+    with pytest.raises(InputError, match="the only row was rejected"):
+        read_truth(files.save(tmp_path, "frame,object,x,y\n1,a,0,far\n", "wrong.csv"))

@@ -119,6 +119,10 @@ def evaluate(
         ),
     ] = False,
     workers: Annotated[int, typer.Option(min=1, help="Processes; each takes whole sequences.")] = 1,
+    strict: Annotated[
+        bool,
+        typer.Option("--strict", help="Stop with exit code 2 if any row of truth is rejected."),
+    ] = False,
     limit: Annotated[
         list[str] | None,
         typer.Option(
@@ -159,6 +163,7 @@ def evaluate(
     from tracker.evaluation.consistency import check_run, checks_table
     from tracker.evaluation.junit import write_junit
     from tracker.evaluation.limits import judge, parse_limit, read_limits, verdict_table
+    from tracker.evaluation.remarks import remarks
     from tracker.evaluation.table import (
         CAUTION,
         DETAILS_LEGEND,
@@ -194,7 +199,7 @@ def evaluate(
                 raise UsageError(f"{flag} needs run folders, and {path} is a track file")
     if limits is not None:
         asked += read_limits(limits, list(sequences))
-    truths = truths_by_name(truth, list(sequences))
+    truths = truths_by_name(truth, list(sequences), strict=strict)
     scopes = _with_regions(scope, list(sequences), ignore_region or [])
     announce_compiling()
     if self_check:
@@ -208,12 +213,8 @@ def evaluate(
         watch=lambda done, total: watched(done, total=total, label="sequences"),
     )
     for name, scores in found.sequences.items():
-        if scores.counts.truth_boxes and scores.counts.track_boxes and not scores.counts.matches:
-            typer.echo(
-                f"{name}: note: no track is ever on an object; are frame numbers and coordinates "
-                "those of this truth?",
-                err=True,
-            )
+        for sentence in remarks(truths[name], scopes[name], scores):
+            typer.echo(f"{name}: {sentence}", err=True)
     honest = (
         {name: check_run(sources[name][0], truths[name], scopes[name]) for name in truths}
         if consistency

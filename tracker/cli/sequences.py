@@ -12,11 +12,6 @@ if TYPE_CHECKING:
     from tracker.results.tracks import Tracks
 
 
-def tracks_by_name(paths: list[Path]) -> dict[str, Tracks]:
-    """Tracks by sequence name, in the order given."""
-    return {name: tracks for name, (_, tracks) in sources_by_name(paths).items()}
-
-
 def sources_by_name(paths: list[Path]) -> dict[str, tuple[Path, Tracks]]:
     """Run folder or file, and its tracks, by sequence name, in the order given."""
     from tracker.log import read_track_file
@@ -52,17 +47,24 @@ def _names(named: list[tuple[Path, str]]) -> list[str]:
     return names
 
 
-def truths_by_name(given: list[str], names: list[str]) -> dict[str, Truth]:
-    """The truth of each sequence, from files in order, NAME=FILE, or a folder."""
+def truths_by_name(given: list[str], names: list[str], *, strict: bool = False) -> dict[str, Truth]:
+    """The truth of each sequence, from files in order, NAME=FILE, or a folder.
+
+    strict : whether a row that would be rejected is an error.
+    """
     from tracker.log import read_truth
 
     parts = {text: text.partition("=") for text in given}
     named = {name: file for name, equals, file in parts.values() if equals and name in names}
     plain = [text for text in given if not (parts[text][1] and parts[text][0] in names)]
+    for text in plain:
+        name, equals, file = parts[text]
+        if equals and not Path(text).exists() and Path(file).exists():
+            raise UsageError(f"there is no sequence '{name}' here ({', '.join(names)})")
     if len(plain) == 1 and not named and (len(names) > 1 or Path(plain[0]).is_dir()):
         folder = Path(plain[0])
         if folder.is_dir() and not list(folder.glob("truth.*")):
-            return {name: read_truth(_truth_in(folder, name)) for name in names}
+            return {name: read_truth(_truth_in(folder, name), strict=strict) for name in names}
     left = [name for name in names if name not in named]
     if len(plain) == 1 and len(left) > 1:
         plain *= len(left)  # several runs over one sequence share its truth
@@ -72,7 +74,7 @@ def truths_by_name(given: list[str], names: list[str]) -> dict[str, Truth]:
             f"but {len(given)} truth files; give one each in order, NAME=FILE, or a folder"
         )
     paths = named | dict(zip(left, plain, strict=True))
-    return {name: read_truth(Path(paths[name])) for name in names}
+    return {name: read_truth(Path(paths[name]), strict=strict) for name in names}
 
 
 def _truth_in(folder: Path, name: str) -> Path:

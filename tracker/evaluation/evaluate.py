@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import difflib
-from collections.abc import Callable, Iterable, Iterator, Mapping
+from collections.abc import Callable, Collection, Iterable, Iterator, Mapping, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from concurrent.futures.process import BrokenProcessPool
 from dataclasses import dataclass, field, replace
 from multiprocessing import get_context
 from typing import Any
+
+import numpy as np
 
 from tracker.errors import InternalError, UsageError
 from tracker.evaluation import referee
@@ -66,6 +68,7 @@ def evaluate(
         count_hota(both, couples),
         measure_sets(found.scene, _cut_off(truth.kind, scope)),
         measure_durations(found.scene, found.match, found.own_track, both.tracks),
+        frozenset({truth.kind}),
     )
 
 
@@ -110,13 +113,14 @@ def evaluate_all(
     scores do not depend on how many there are.   watch : wraps the finished sequences and their
     number, to show progress.
 
-    Raises what `evaluate` raises, and UsageError for classes that no truth has.
+    Raises what `evaluate` raises, and UsageError for choices that no truth can follow: classes that
+    none has, scores per class or a visibility floor without such a column.
     """
     scopes = {
         name: (scope.get(name) if isinstance(scope, Mapping) else scope) or Scope()
         for name in sequences
     }
-    _check_classes(sequences, scopes)
+    _check_choices([truth for _, truth in sequences.values()], scopes.values(), per_class)
     jobs = {
         name: (tracks, truth, scopes[name], with_referee, per_class)
         for name, (tracks, truth) in sequences.items()
@@ -164,15 +168,24 @@ def _evaluate_one(
     return scores, evaluate_classes(tracks, truth, scope, with_referee=with_referee)
 
 
-def _check_classes(
-    sequences: Mapping[str, tuple[Tracks, Truth]], scopes: Mapping[str, Scope]
-) -> None:
-    """A class that nobody has is a slip of the pen, and would silently change the scores."""
-    known = sorted({label for _, truth in sequences.values() for label in truth.labels})
-    for scope in scopes.values():
+def _check_choices(truths: Sequence[Truth], scopes: Collection[Scope], per_class: bool) -> None:
+    """A choice that no truth can follow is a slip, and would silently do nothing or too much.
+
+    Truth without a row could follow any.
+    """
+    filled = [truth for truth in truths if len(truth)]
+    if not filled:
+        return
+    known = sorted({label for truth in filled for label in truth.labels})
+    for scope in scopes:
         for label in (*(scope.classes_scored or ()), *scope.classes_ignored):
             if label not in known:
                 near = difflib.get_close_matches(label, known, n=1, cutoff=0.5)
                 hint = f"; did you mean '{near[0]}'?" if near else ""
                 there = f"there are {', '.join(known)}" if known else "it has no classes"
                 raise UsageError(f"no truth has the class '{label}' ({there}){hint}")
+    if per_class and not known:
+        raise UsageError("there are no scores per class: no truth has a column 'label'")
+    floor = any(scope.visibility_floor is not None for scope in scopes)
+    if floor and all(np.isnan(truth.visibility).all() for truth in filled):
+        raise UsageError("there is no visibility to compare: no truth has a column 'visibility'")

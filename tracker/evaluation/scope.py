@@ -28,7 +28,8 @@ class Scope:
 
     iou_threshold : least IoU of a paired box.   distance_threshold : largest distance of a
     paired point, in its own unit.   classes_scored : labels of the truth that are scored, None
-    for all.   classes_ignored : a track box that pairs with such a row is taken out.
+    for all.   classes_ignored : a track that pairs with such a row, at these thresholds, is taken
+    out.
     count_coasting : whether coasting rows count; None follows the file's `reported`.
     visibility_floor : truth that is less visible is ignored as such classes are.
     regions_ignored : so is truth whose centre is in one of these areas, and there a track that

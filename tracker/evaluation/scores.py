@@ -14,6 +14,7 @@ from tracker.evaluation.durations import Durations
 from tracker.evaluation.hota import HotaCounts
 from tracker.evaluation.set_distance import NAMES as SET_SCORES
 from tracker.evaluation.set_distance import SetDistances
+from tracker.log.model import Kind
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,24 +47,31 @@ class Counts:
 
 @dataclass(frozen=True, slots=True)
 class Scores:
-    """Scores of one sequence or of several together; ratios are between 0 and 1, or None."""
+    """Scores of one sequence or of several together; ratios are between 0 and 1, or None.
+
+    Boxes and points together have no mean distance (MOTP, GOSPA, OSPA): what boxes lack in overlap
+    and what points are apart have no common unit.
+    """
 
     counts: Counts
     hota_counts: HotaCounts
     set_distances: SetDistances
     durations: Durations
+    kinds: frozenset[Kind]
 
     @classmethod
     def total(cls, parts: Iterable[Scores]) -> Scores:
         """Scores of the summed counts."""
         counts, hota = Counts(), HotaCounts.none()
         sets, durations = SetDistances(), Durations.none()
+        kinds: frozenset[Kind] = frozenset()
         for part in parts:
             counts += part.counts
             hota += part.hota_counts
             sets += part.set_distances
             durations += part.durations
-        return cls(counts, hota, sets, durations)
+            kinds |= part.kinds
+        return cls(counts, hota, sets, durations, kinds)
 
     @property
     def mota(self) -> float | None:
@@ -75,6 +83,8 @@ class Scores:
     @property
     def motp(self) -> float | None:
         """Mean *distance* of paired rows, lower is better: 1 − IoU of boxes, units of points."""
+        if len(self.kinds) > 1:
+            return None
         return _ratio(self.counts.distance_sum, self.counts.matches)
 
     @property
@@ -123,6 +133,11 @@ class Scores:
         """Localisation accuracy: similarity of pairs, averaged over the thresholds with any."""
         return self.hota_counts.mean("loca")
 
+    @property
+    def set_scores(self) -> dict[str, float | None]:
+        """GOSPA and OSPA with what they are made of."""
+        return SetDistances().scores() if len(self.kinds) > 1 else self.set_distances.scores()
+
     def as_dict(self) -> dict[str, Any]:
         """All scores and counts by name, as `margent evaluate --json` prints them."""
         ratios = {name: getattr(self, name) for name in RATIOS}
@@ -130,7 +145,7 @@ class Scores:
             "durations": self.durations.summary(),
             "hota_by_threshold": self.hota_counts.by_threshold(),
         }
-        return ratios | asdict(self.counts) | self.set_distances.scores() | nested
+        return ratios | asdict(self.counts) | self.set_scores | nested
 
 
 RATIOS = (

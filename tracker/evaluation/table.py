@@ -15,12 +15,20 @@ CAUTION = (
     "people are personal data: follow the law and the licensed practice that apply where you are."
 )
 LEGEND = (
-    "MOTP is a distance (1 - IoU for boxes): lower is better. MT/PT/ML: objects tracked in at "
-    "least 80%, in between, in less than 20% of their frames."
+    "MOTP is a mean distance (1 - IoU of boxes, the log's unit of points): lower is better. "
+    "Truth and tracked: rows that are scored. MT, PT, ML: objects tracked in at least 80%, in "
+    "between, in less than 20% of their frames."
+)
+DETAILS_LEGEND = (
+    "GOSPA and OSPA: root mean square over frames, lower is better; localisation, missed and false "
+    "are the mean squares that GOSPA is made of. Durations in frames, as median (largest): track "
+    "length; frames before an object is found; gaps between its pairings; time until it has its "
+    "own track again, and how many objects never had it again."
 )
 
-# Heading, and how a cell is made.
-COLUMNS = (
+# Heading, and how a cell is made. Four narrow tables instead of one: a terminal has 100 columns.
+Columns = Sequence[tuple[str, Callable[[Scores], str]]]
+RATIO_COLUMNS: Columns = (
     ("MOTA", lambda s: _percent(s.mota)),
     ("IDF1", lambda s: _percent(s.idf1)),
     ("HOTA", lambda s: _percent(s.hota)),
@@ -31,30 +39,29 @@ COLUMNS = (
     ("prec.", lambda s: _percent(s.precision)),
     ("recall", lambda s: _percent(s.recall)),
     ("MOTP", lambda s: "-" if s.motp is None else f"{s.motp:.3f}"),
+)
+COUNT_COLUMNS: Columns = (
+    ("objects", lambda s: str(s.counts.objects)),
+    ("MT", lambda s: str(s.counts.mostly_tracked)),
+    ("PT", lambda s: str(s.counts.partially_tracked)),
+    ("ML", lambda s: str(s.counts.mostly_lost)),
+    ("truth", lambda s: str(s.counts.truth_boxes)),
+    ("tracked", lambda s: str(s.counts.track_boxes)),
+    ("matches", lambda s: str(s.counts.matches)),
     ("FP", lambda s: str(s.counts.false_positives)),
     ("misses", lambda s: str(s.counts.misses)),
     ("switch", lambda s: str(s.counts.switches)),
     ("frag", lambda s: str(s.counts.fragmentations)),
-    (
-        "MT/PT/ML",
-        lambda s: f"{s.counts.mostly_tracked}/{s.counts.partially_tracked}/{s.counts.mostly_lost}",
-    ),
 )
-
-
-DETAILS_LEGEND = (
-    "GOSPA and OSPA: root mean square over frames, lower is better; localisation, missed and false "
-    "are the mean squares that GOSPA is made of. Durations in frames, as median (largest): track "
-    "length; frames before an object is found; gaps between its pairings; time until it has its "
-    "own track again, and how many objects never had it again."
-)
-DETAILS = (
+DISTANCE_COLUMNS: Columns = (
     ("LocA", lambda s: _percent(s.loca)),
-    ("GOSPA", lambda s: _number(s.set_distances.scores()["gospa"])),
-    ("localis.", lambda s: _number(s.set_distances.scores()["gospa_localisation"])),
-    ("missed", lambda s: _number(s.set_distances.scores()["gospa_missed"])),
-    ("false", lambda s: _number(s.set_distances.scores()["gospa_false"])),
-    ("OSPA", lambda s: _number(s.set_distances.scores()["ospa"])),
+    ("GOSPA", lambda s: _number(s.set_scores["gospa"])),
+    ("localisation", lambda s: _number(s.set_scores["gospa_localisation"])),
+    ("missed", lambda s: _number(s.set_scores["gospa_missed"])),
+    ("false", lambda s: _number(s.set_scores["gospa_false"])),
+    ("OSPA", lambda s: _number(s.set_scores["ospa"])),
+)
+DURATION_COLUMNS: Columns = (
     ("length", lambda s: _lasting(s, "track_frames")),
     ("delay", lambda s: _lasting(s, "frames_to_first_match")),
     ("gaps", lambda s: _lasting(s, "gap_frames")),
@@ -64,13 +71,13 @@ DETAILS = (
 
 
 def scores_table(evaluation: Evaluation) -> str:
-    """One line a sequence and, for several, one overall; then one a class, if any."""
-    return _table(evaluation, COLUMNS)
+    """Ratios, then counts: a line a sequence, for several one overall, then one a class if any."""
+    return _tables(evaluation, RATIO_COLUMNS, COUNT_COLUMNS)
 
 
 def details_table(evaluation: Evaluation) -> str:
-    """Localisation, set distances and durations, in the lines of `scores_table`."""
-    return _table(evaluation, DETAILS)
+    """Distances, then durations, in the lines of `scores_table`."""
+    return _tables(evaluation, DISTANCE_COLUMNS, DURATION_COLUMNS)
 
 
 def thresholds_table(evaluation: Evaluation) -> str:
@@ -82,7 +89,11 @@ def thresholds_table(evaluation: Evaluation) -> str:
     return "\n".join(lines)
 
 
-def _table(evaluation: Evaluation, columns: Sequence[tuple[str, Callable[[Scores], str]]]) -> str:
+def _tables(evaluation: Evaluation, *parts: Columns) -> str:
+    return "\n\n".join(_table(evaluation, columns) for columns in parts)
+
+
+def _table(evaluation: Evaluation, columns: Columns) -> str:
     rows: list[tuple[str, Scores]] = list(evaluation.sequences.items())
     if len(rows) > 1:
         rows.append(("OVERALL", evaluation.overall))

@@ -127,14 +127,18 @@ class Sieve:
         return tuple(sorted((*self.table.refused, *found), key=lambda one: one.line))
 
 
-def settle(sieve: Sieve, path: Path, *, strict: bool) -> tuple[Rejection, ...]:
+def settle(
+    sieve: Sieve, path: Path, *, strict: bool, may_be_empty: bool = False
+) -> tuple[Rejection, ...]:
     """The rejections of a file whose checks are done.
+
+    may_be_empty : whether column names without a row will do.
 
     Raises InputError if there is no row or no row is left, RejectedRowsError if `strict` and
     any was rejected.
     """
     rejections = sieve.rejections()
-    if not len(sieve.table) and not rejections:
+    if not len(sieve.table) and not rejections and not may_be_empty:
         raise InputError("there are column names but no row", path=path)
     if rejections and not sieve.keep.any():
         counts = Counter((one.column, kind_of_reason(one.reason)) for one in rejections)

@@ -21,6 +21,8 @@ from tracker.log.recognise import read_table
 from tracker.log.sieve import Sieve, settle
 from tracker.log.source import locate, open_source
 
+NOTHING = "the truth has column names but no row: nothing was there to be tracked"
+
 
 def read_truth(
     path: str | Path,
@@ -33,7 +35,8 @@ def read_truth(
 
     The identity is the column `object`, `track` or `id`; `scored` (1 or 0), `visibility` and
     `label` may be there. In the benchmark layout the rows are scored where the flag (or
-    confidence) is not 0. A row is rejected if its object is in that frame already.
+    confidence) is not 0. A row is rejected if its object is in that frame already. A file with a
+    header alone says that there was nothing.
 
     Parameters are those of `read_log`; a folder must have one file named ``truth.*``.
 
@@ -50,7 +53,7 @@ def read_truth(
     identities = check_identified(sieve, path, Role.TRUTH)
     scored = flags(sieve, "scored")
     visibility = optional_numbers(sieve, "visibility")
-    rejections = settle(sieve, path, strict=strict)
+    rejections = settle(sieve, path, strict=strict, may_be_empty=True)
     rows = identified_rows(sieve, identities)
     label, labels = labels_of(table, rows.row)
     return Truth(
@@ -71,5 +74,5 @@ def read_truth(
         visibility=np.array(visibility[rows.row]),
         labels=labels,
         rejections=rejections,
-        notes=table.notes,
+        notes=(*table.notes, *(() if len(table) else (NOTHING,))),
     )
