@@ -36,6 +36,7 @@ PUBLIC_NAMES = [
     "Tracks",
     "Truth",
     "associate_log",
+    "compare",
     "diagnose",
     "evaluate",
     "explain",

@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     from tracker.association import CandidatePairs, k_best, marginals, register_cost
     from tracker.causes import diagnose
+    from tracker.comparison import compare
     from tracker.diagnosis import explain
     from tracker.engine import Engine, FrameResult
     from tracker.errors import MargentError
@@ -35,6 +36,7 @@ _HOME = {
     "Tracks": "tracker.results",
     "Truth": "tracker.log",
     "associate_log": "tracker.offline",
+    "compare": "tracker.comparison",
     "diagnose": "tracker.causes",
     "evaluate": "tracker.evaluation",
     "explain": "tracker.diagnosis",
@@ -61,6 +63,7 @@ __all__ = [
     "Tracks",
     "Truth",
     "associate_log",
+    "compare",
     "diagnose",
     "evaluate",
     "explain",

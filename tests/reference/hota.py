@@ -19,6 +19,27 @@ def hota_counts(scene, couple, couples, object_rows, track_rows, thresholds):
     return hits, association, similarity
 
 
+def hota_by_frame(scene, couple, couples, object_rows, track_rows, thresholds):
+    del couple, couples, object_rows, track_rows
+    out = []
+    for f in range(len(scene.truth_start) - 1):
+        first = scene.pair_start[scene.truth_start[f]]
+        last = scene.pair_start[scene.truth_start[f + 1]]
+        rows = []
+        for alpha in thresholds:
+            positives = true_positives(scene, alpha)
+            here = [c for c in positives if first <= c[2] < last]
+            rows.append(
+                (
+                    len(here),
+                    sum(accuracy(scene, positives, c) for c in here),
+                    sum(scene.similarity[c[2]] for c in here),
+                )
+            )
+        out.append(rows)
+    return tuple([[row[part] for row in rows] for rows in out] for part in range(3))
+
+
 def true_positives(scene, alpha):
     """List of (object, track, pair) over all frames."""
     possible = [

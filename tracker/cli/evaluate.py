@@ -3,12 +3,27 @@
 from __future__ import annotations
 
 import json
-from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
 
 import typer
 
+from tracker.cli.scoring import (
+    Coasting,
+    DistanceThreshold,
+    FrameStride,
+    IgnoreClass,
+    IgnoreRegion,
+    IouThreshold,
+    Referee,
+    ScoreClass,
+    Strict,
+    TruthFiles,
+    VisibilityFloor,
+    Workers,
+    scopes_of,
+    wants_referee,
+)
 from tracker.errors import LimitError, UsageError
 
 if TYPE_CHECKING:
@@ -26,46 +41,14 @@ def evaluate(
             help="Run folders, folders of run folders, or files with tracks.",
         ),
     ],
-    truth: Annotated[
-        list[str],
-        typer.Option(
-            metavar="TRUTH",
-            help="Truth file; for several sequences repeat it in their order, give NAME=FILE, or "
-            "one folder that holds NAME/truth.* for each.",
-        ),
-    ],
-    iou_threshold: Annotated[
-        float, typer.Option(help="Least IoU at which a box counts as on its object.")
-    ] = 0.5,
-    distance_threshold: Annotated[
-        float | None,
-        typer.Option(help="Points: largest distance that counts, in the log's own unit."),
-    ] = None,
-    score_class: Annotated[
-        list[str] | None,
-        typer.Option(help="Score only truth with this label. Repeatable."),
-    ] = None,
-    ignore_class: Annotated[
-        list[str] | None,
-        typer.Option(help="Take out track boxes that lie on truth with this label. Repeatable."),
-    ] = None,
-    ignore_region: Annotated[
-        list[str] | None,
-        typer.Option(
-            metavar="[NAME=]FILE",
-            help="Do not score what lies (by its centre) in these polygons, of all sequences or of "
-            "one: TOML with [[region]] points = [[x, y], ...], GeoJSON or WKT. Repeatable.",
-        ),
-    ] = None,
-    visibility_floor: Annotated[
-        float | None, typer.Option(help="Ignore truth that is less visible than this, 0 to 1.")
-    ] = None,
-    frame_stride: Annotated[
-        int | None,
-        typer.Option(
-            help="Score every k-th annotated frame and no other; 1 leaves out frames without truth."
-        ),
-    ] = None,
+    truth: TruthFiles,
+    iou_threshold: IouThreshold = 0.5,
+    distance_threshold: DistanceThreshold = None,
+    score_class: ScoreClass = None,
+    ignore_class: IgnoreClass = None,
+    ignore_region: IgnoreRegion = None,
+    visibility_floor: VisibilityFloor = None,
+    frame_stride: FrameStride = None,
     per_class: Annotated[
         bool,
         typer.Option(
@@ -101,28 +84,16 @@ def evaluate(
             "in their order; they are run again with a ledger. Repeatable."
         ),
     ] = None,
-    coasting: Annotated[
-        str, typer.Option(help="Count coasting rows: 'as-reported', 'yes' or 'no'.")
-    ] = "as-reported",
-    referee: Annotated[
-        str,
-        typer.Option(
-            help="'on': motmetrics counts too and must agree. 'off': for sizes beyond its memory "
-            "(about 0.6 GB for a million pairs that may match, and 3.4 GB for 10,000 objects and "
-            "tracks together, growing with their square)."
-        ),
-    ] = "on",
+    coasting: Coasting = "as-reported",
+    referee: Referee = "on",
     self_check: Annotated[
         bool,
         typer.Option(
             help="First score the truth against itself, which must give 100%; exit code 1 if not."
         ),
     ] = False,
-    workers: Annotated[int, typer.Option(min=1, help="Processes; each takes whole sequences.")] = 1,
-    strict: Annotated[
-        bool,
-        typer.Option("--strict", help="Stop with exit code 2 if any row of truth is rejected."),
-    ] = False,
+    workers: Workers = 1,
+    strict: Strict = False,
     limit: Annotated[
         list[str] | None,
         typer.Option(
@@ -159,7 +130,7 @@ def evaluate(
     """
     from tracker.cli.progress import announce_compiling, watched
     from tracker.cli.sequences import sources_by_name, truths_by_name
-    from tracker.evaluation import Scope, evaluate_all
+    from tracker.evaluation import evaluate_all
     from tracker.evaluation.consistency import check_run, checks_table
     from tracker.evaluation.junit import write_junit
     from tracker.evaluation.limits import judge, parse_limit, read_limits, verdict_table
@@ -174,20 +145,7 @@ def evaluate(
     )
     from tracker.results import is_run
 
-    counted = {"as-reported": None, "yes": True, "no": False}
-    if coasting not in counted:
-        raise UsageError(f"--coasting takes 'as-reported', 'yes' or 'no', found {coasting!r}")
-    if referee not in ("on", "off"):
-        raise UsageError(f"--referee takes 'on' or 'off', found {referee!r}")
-    scope = Scope(
-        iou_threshold,
-        distance_threshold,
-        tuple(score_class) if score_class else None,
-        tuple(ignore_class or ()),
-        counted[coasting],
-        visibility_floor=visibility_floor,
-        frame_stride=frame_stride,
-    )
+    with_referee = wants_referee(referee)
     asked = [parse_limit(text) for text in limit or ()]
     if junit is not None and not asked and limits is None:
         raise UsageError("--junit reports limits: give --limit or --limits")
@@ -199,15 +157,25 @@ def evaluate(
                 raise UsageError(f"{flag} needs run folders, and {path} is a track file")
     if limits is not None:
         asked += read_limits(limits, list(sequences))
+    scopes = scopes_of(
+        list(sequences),
+        iou_threshold=iou_threshold,
+        distance_threshold=distance_threshold,
+        score_class=score_class,
+        ignore_class=ignore_class,
+        ignore_region=ignore_region,
+        visibility_floor=visibility_floor,
+        frame_stride=frame_stride,
+        coasting=coasting,
+    )
     truths = truths_by_name(truth, list(sequences), strict=strict)
-    scopes = _with_regions(scope, list(sequences), ignore_region or [])
     announce_compiling()
     if self_check:
-        _check_truth(truths, scopes, referee == "on")
+        _check_truth(truths, scopes, with_referee)
     found = evaluate_all(
         {name: (sequences[name], truths[name]) for name in truths},
         scopes,
-        with_referee=referee == "on",
+        with_referee=with_referee,
         per_class=per_class,
         workers=workers,
         watch=lambda done, total: watched(done, total=total, label="sequences"),
@@ -282,21 +250,6 @@ def _trace(
             found[name] = diagnose(folder, truths[name], scopes[name])
         write_causes(found[name], path / "causes.csv")
     return found
-
-
-def _with_regions(scope: Scope, names: list[str], given: list[str]) -> dict[str, Scope]:
-    """The scope of each sequence, with the regions for all and its own."""
-    from tracker.evaluation import read_regions
-
-    scopes = dict.fromkeys(names, scope)
-    for text in given:
-        name, equals, file = text.partition("=")
-        one = bool(equals) and name in names
-        regions = read_regions(Path(file if one else text))
-        for target in [name] if one else names:
-            own = scopes[target]
-            scopes[target] = replace(own, regions_ignored=own.regions_ignored + regions)
-    return scopes
 
 
 def _check_truth(truths: dict[str, Truth], scopes: dict[str, Scope], with_referee: bool) -> None:

@@ -11,8 +11,10 @@ if TYPE_CHECKING:
     from tracker.log.model import Truth
     from tracker.results.tracks import Tracks
 
+    Source = tuple[Path, Tracks]
 
-def sources_by_name(paths: list[Path]) -> dict[str, tuple[Path, Tracks]]:
+
+def sources_by_name(paths: list[Path]) -> dict[str, Source]:
     """Run folder or file, and its tracks, by sequence name, in the order given."""
     from tracker.log import read_track_file
     from tracker.results import is_run, read_run
@@ -31,6 +33,27 @@ def sources_by_name(paths: list[Path]) -> dict[str, tuple[Path, Tracks]]:
         read += [(run, read_run(run) if is_run(run) else read_track_file(run)) for run in runs]
     names = _names([(path, tracks.name) for path, tracks in read])
     return dict(zip(names, read, strict=True))
+
+
+def pairs_by_name(a: Path, b: Path) -> dict[str, tuple[Source, Source]]:
+    """The sources of two runs by sequence name, in A's order.
+
+    Sequences go together by name; a single one of each goes together whatever its name. Raises
+    UsageError where one has no partner.
+    """
+    of_a, of_b = sources_by_name([a]), sources_by_name([b])
+    if len(of_a) == len(of_b) == 1:
+        other = next(iter(of_b.values()))
+        return {name: (one, other) for name, one in of_a.items()}
+    alone = [f"'{n}' is in {a} alone" for n in of_a if n not in of_b]
+    alone += [f"'{n}' is in {b} alone" for n in of_b if n not in of_a]
+    if alone:
+        more = f" (and {len(alone) - 3} more)" if len(alone) > 3 else ""
+        raise UsageError(
+            f"the runs have different sequences: {'; '.join(alone[:3])}{more}; compare single "
+            "runs, or associate both over the same logs"
+        )
+    return {name: (one, of_b[name]) for name, one in of_a.items()}
 
 
 def _names(named: list[tuple[Path, str]]) -> list[str]:

@@ -3,21 +3,20 @@
 from __future__ import annotations
 
 import difflib
-from collections.abc import Callable, Collection, Iterable, Iterator, Mapping, Sequence
-from concurrent.futures import ProcessPoolExecutor
-from concurrent.futures.process import BrokenProcessPool
+from collections.abc import Callable, Collection, Iterable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
-from multiprocessing import get_context
 from typing import Any
 
 import numpy as np
 
-from tracker.errors import InternalError, UsageError
+from tracker.errors import UsageError
 from tracker.evaluation import referee
-from tracker.evaluation.counts import count
-from tracker.evaluation.couples import find_couples
+from tracker.evaluation.counts import Counted, count
+from tracker.evaluation.couples import Couples, find_couples
 from tracker.evaluation.durations import measure_durations
+from tracker.evaluation.frames import SideBySide
 from tracker.evaluation.hota import count_hota
+from tracker.evaluation.processes import in_processes
 from tracker.evaluation.scope import Scope, close_pairs, scored_rows
 from tracker.evaluation.scores import Scores
 from tracker.evaluation.set_distance import measure_sets
@@ -46,6 +45,17 @@ class Evaluation:
         }
 
 
+@dataclass(frozen=True, slots=True, eq=False)
+class Examined:
+    """One scored sequence with what its scores were made of."""
+
+    both: SideBySide
+    couples: Couples
+    counted: Counted
+    cut_off: float
+    scores: Scores
+
+
 def evaluate(
     tracks: Tracks, truth: Truth, scope: Scope | None = None, *, with_referee: bool = True
 ) -> Scores:
@@ -56,6 +66,13 @@ def evaluate(
     Raises UsageError where tracks and truth do not fit together, InputError where a track or
     object is twice in a frame, InternalError where the referee counts otherwise.
     """
+    return examine(tracks, truth, scope, with_referee=with_referee).scores
+
+
+def examine(
+    tracks: Tracks, truth: Truth, scope: Scope | None = None, *, with_referee: bool = True
+) -> Examined:
+    """As `evaluate`, keeping what the scores were made of."""
     scope = scope or Scope()
     both = scored_rows(tracks, truth, scope)
     close = close_pairs(both, truth.kind, scope)
@@ -63,13 +80,15 @@ def evaluate(
     found = count(both, couples, close)
     if with_referee:
         referee.check(found.counts, found.scene, tracks.name)
-    return Scores(
+    cut_off = _cut_off(truth.kind, scope)
+    scores = Scores(
         found.counts,
         count_hota(both, couples),
-        measure_sets(found.scene, _cut_off(truth.kind, scope)),
+        measure_sets(found.scene, cut_off),
         measure_durations(found.scene, found.match, found.own_track, both.tracks),
         frozenset({truth.kind}),
     )
+    return Examined(both, couples, found, cut_off, scores)
 
 
 def _cut_off(kind: Kind, scope: Scope) -> float:
@@ -116,17 +135,14 @@ def evaluate_all(
     Raises what `evaluate` raises, and UsageError for choices that no truth can follow: classes that
     none has, scores per class or a visibility floor without such a column.
     """
-    scopes = {
-        name: (scope.get(name) if isinstance(scope, Mapping) else scope) or Scope()
-        for name in sequences
-    }
-    _check_choices([truth for _, truth in sequences.values()], scopes.values(), per_class)
+    scopes = scope_of_each(scope, sequences)
+    check_choices([truth for _, truth in sequences.values()], scopes.values(), per_class)
     jobs = {
         name: (tracks, truth, scopes[name], with_referee, per_class)
         for name, (tracks, truth) in sequences.items()
     }
-    finished = _run(jobs, workers)
-    found = dict(watch(finished, len(jobs)) if watch else finished)
+    finished = in_processes(_evaluate_one, jobs, workers)
+    found: dict[str, Found] = dict(watch(finished, len(jobs)) if watch else finished)
     labels = dict.fromkeys(label for _, classes in found.values() for label in classes)
     return Evaluation(
         {name: scores for name, (scores, _) in found.items()},
@@ -137,26 +153,7 @@ def evaluate_all(
     )
 
 
-Job = tuple[Tracks, Truth, Scope, bool, bool]
 Found = tuple[Scores, dict[str, Scores]]
-
-
-def _run(jobs: dict[str, Job], workers: int) -> Iterator[tuple[str, Found]]:
-    if workers == 1 or len(jobs) < 2:
-        for name, job in jobs.items():
-            yield name, _evaluate_one(*job)
-        return
-    # Spawned, not forked: a fork would copy locks of threads that the parent may have started.
-    with ProcessPoolExecutor(min(workers, len(jobs)), mp_context=get_context("spawn")) as pool:
-        pending = {name: pool.submit(_evaluate_one, *job) for name, job in jobs.items()}
-        for name, future in pending.items():
-            try:
-                yield name, future.result()
-            except BrokenProcessPool:
-                raise InternalError(
-                    f"'{name}': the worker process died (out of memory?); try fewer --workers or "
-                    "--referee off"
-                ) from None
 
 
 def _evaluate_one(
@@ -168,7 +165,19 @@ def _evaluate_one(
     return scores, evaluate_classes(tracks, truth, scope, with_referee=with_referee)
 
 
-def _check_choices(truths: Sequence[Truth], scopes: Collection[Scope], per_class: bool) -> None:
+def scope_of_each(
+    scope: Scope | Mapping[str, Scope] | None, names: Iterable[str]
+) -> dict[str, Scope]:
+    """The scope of each sequence by name, from one for all or one of each."""
+    return {
+        name: (scope.get(name) if isinstance(scope, Mapping) else scope) or Scope()
+        for name in names
+    }
+
+
+def check_choices(
+    truths: Sequence[Truth], scopes: Collection[Scope], per_class: bool = False
+) -> None:
     """A choice that no truth can follow is a slip, and would silently do nothing or too much.
 
     Truth without a row could follow any.

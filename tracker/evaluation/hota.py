@@ -8,7 +8,7 @@ import numpy as np
 
 from tracker.evaluation.couples import Couples
 from tracker.evaluation.frames import SideBySide
-from tracker.kernels.hota import hota_counts
+from tracker.kernels.hota import hota_by_frame, hota_counts
 from tracker.log.model import Floats, Ints
 
 # Least similarity of a pair: 0.05, 0.10, … 0.95.
@@ -99,3 +99,19 @@ def count_hota(both: SideBySide, couples: Couples) -> HotaCounts:
         THRESHOLDS,
     )
     return HotaCounts(len(both.truth_row), len(both.track_row), hits, association, similarity)
+
+
+def count_hota_by_frame(both: SideBySide, couples: Couples) -> tuple[Ints, Floats, Floats]:
+    """(F, K) what each frame adds to the arrays of `HotaCounts`, in their order.
+
+    The pairs and their A(c) are those of the whole sequence: a couple's accuracy is shared out
+    among the frames that have it.
+    """
+    return hota_by_frame(
+        both.scene,
+        couples.of_pair,
+        len(couples),
+        couples.object_rows,
+        couples.track_rows,
+        THRESHOLDS,
+    )

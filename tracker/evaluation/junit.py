@@ -5,10 +5,10 @@ from __future__ import annotations
 import re
 from collections.abc import Sequence
 from pathlib import Path
+from typing import Protocol
 from xml.etree import ElementTree
 
 from tracker.errors import OutputError
-from tracker.evaluation.limits import Verdict
 from tracker.results.folder import atomic_file
 
 SUITE = "margent evaluate"
@@ -16,7 +16,23 @@ SUITE = "margent evaluate"
 _FORBIDDEN = re.compile("[^\t\n\r\u0020-\ud7ff\ue000-\ufffd\U00010000-\U0010ffff]")
 
 
-def junit_text(verdicts: Sequence[Verdict]) -> str:
+class Case(Protocol):
+    """Something that was met or not.
+
+    where : class name of the test case.   name : what was asked.   message : what was found.
+    """
+
+    @property
+    def where(self) -> str: ...
+    @property
+    def name(self) -> str: ...
+    @property
+    def met(self) -> bool: ...
+    @property
+    def message(self) -> str: ...
+
+
+def junit_text(verdicts: Sequence[Case], suite_name: str = SUITE) -> str:
     """One suite with a test case a limit; those not met are failures.
 
     Elements and attributes are those that the common schema of JUnit reports requires. There is
@@ -24,7 +40,7 @@ def junit_text(verdicts: Sequence[Verdict]) -> str:
     """
     failures = sum(not verdict.met for verdict in verdicts)
     counts = {
-        "name": SUITE,
+        "name": suite_name,
         "tests": str(len(verdicts)),
         "failures": str(failures),
         "errors": "0",
@@ -36,13 +52,13 @@ def junit_text(verdicts: Sequence[Verdict]) -> str:
         case = ElementTree.SubElement(
             suite,
             "testcase",
-            {"classname": _clean(verdict.where), "name": verdict.limit.words, "time": "0"},
+            {"classname": _clean(verdict.where), "name": verdict.name, "time": "0"},
         )
         if not verdict.met:
-            found = "has no value" if verdict.found is None else f"is {verdict.found:.6g}"
-            message = f"{verdict.limit.score} {found}, the limit is {verdict.limit.words}"
-            failure = ElementTree.SubElement(case, "failure", {"message": message, "type": "limit"})
-            failure.text = message
+            failure = ElementTree.SubElement(
+                case, "failure", {"message": verdict.message, "type": "limit"}
+            )
+            failure.text = verdict.message
     ElementTree.indent(suites)
     return (
         '<?xml version="1.0" encoding="UTF-8"?>\n'
@@ -51,7 +67,7 @@ def junit_text(verdicts: Sequence[Verdict]) -> str:
     )
 
 
-def write_junit(path: Path, verdicts: Sequence[Verdict]) -> None:
+def write_junit(path: Path, verdicts: Sequence[Case], suite_name: str = SUITE) -> None:
     """Write the report; it appears complete or not at all.
 
     Raises OutputError where it cannot be written.
@@ -61,7 +77,7 @@ def write_junit(path: Path, verdicts: Sequence[Verdict]) -> None:
     except OSError as error:
         raise OutputError(f"cannot be written: {error.strerror}", path=path) from None
     with atomic_file(path) as working:
-        working.write_text(junit_text(verdicts), encoding="utf-8")
+        working.write_text(junit_text(verdicts, suite_name), encoding="utf-8")
 
 
 def _clean(text: str) -> str:

@@ -56,6 +56,16 @@ class Verdict:
     def where(self) -> str:
         return self.limit.sequence or OVERALL
 
+    @property
+    def name(self) -> str:
+        return self.limit.words
+
+    @property
+    def message(self) -> str:
+        """What a report of failures says."""
+        found = "has no value" if self.found is None else f"is {self.found:.6g}"
+        return f"{self.limit.score} {found}, the limit is {self.limit.words}"
+
     def as_dict(self) -> dict[str, Any]:
         """As `margent evaluate --json` prints it."""
         return {
@@ -166,7 +176,7 @@ def _value(evaluation: Evaluation, limit: Limit) -> float | None:
     scores: Scores = (
         evaluation.overall if limit.sequence is None else evaluation.sequences[limit.sequence]
     )
-    return scores.as_dict()[limit.score]
+    return scores.value(limit.score)
 
 
 def verdict_table(verdicts: Sequence[Verdict]) -> str:

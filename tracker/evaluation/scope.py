@@ -93,7 +93,7 @@ def scored_rows(tracks: Tracks, truth: Truth, scope: Scope) -> SideBySide:
     both = side_by_side(
         tracks,
         truth,
-        _counted(tracks, scope),
+        counted_rows(tracks, scope),
         least_iou=min(scope.iou_threshold, float(THRESHOLDS[0])),
         reach=scope.distance_threshold or math.inf,
     )
@@ -144,8 +144,8 @@ def _in_regions(z: Floats, scope: Scope) -> NDArray[np.bool_]:
     return out
 
 
-def _counted(tracks: Tracks, scope: Scope) -> NDArray[np.bool_]:
-    """(n,) track rows that are output."""
+def counted_rows(tracks: Tracks, scope: Scope) -> NDArray[np.bool_]:
+    """(n,) which track rows are output and count."""
     out = tracks.reported
     if scope.count_coasting is not None:
         coasting = tracks.state == TrackState.COASTING

@@ -138,6 +138,12 @@ class Scores:
         """GOSPA and OSPA with what they are made of."""
         return SetDistances().scores() if len(self.kinds) > 1 else self.set_distances.scores()
 
+    def value(self, name: str) -> float | None:
+        """One of the scores of `LIMITED` by its name."""
+        if name in RATIOS:
+            return getattr(self, name)
+        return self.set_scores[name] if name in SET_SCORES else getattr(self.counts, name)
+
     def as_dict(self) -> dict[str, Any]:
         """All scores and counts by name, as `margent evaluate --json` prints them."""
         ratios = {name: getattr(self, name) for name in RATIOS}

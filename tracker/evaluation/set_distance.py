@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import astuple, dataclass
+from dataclasses import astuple, dataclass, fields
 from math import sqrt
 
 import numpy as np
 
 from tracker.kernels.clearmot import Scene
 from tracker.kernels.gospa import set_pairs
+from tracker.log.model import Floats
 
 
 @dataclass(frozen=True, slots=True)
@@ -59,8 +60,15 @@ def measure_sets(scene: Scene, cut_off: float) -> SetDistances:
 
     A cut-off of 0 (an IoU threshold of 1) leaves nothing to measure.
     """
+    frames, *sums = sets_by_frame(scene, cut_off).sum(axis=0).tolist()
+    return SetDistances(int(frames), *sums)
+
+
+def sets_by_frame(scene: Scene, cut_off: float) -> Floats:
+    """(F, 7) what each frame adds to the fields of `SetDistances`, in their order."""
+    out = np.zeros((len(scene.truth_start) - 1, len(fields(SetDistances))))
     if cut_off <= 0.0:
-        return SetDistances()
+        return out
     pairs, square = set_pairs(scene, cut_off)
     objects, tracks = np.diff(scene.truth_start), np.diff(scene.track_start)
     larger, smaller = np.maximum(objects, tracks), np.minimum(objects, tracks)
@@ -69,12 +77,11 @@ def measure_sets(scene: Scene, cut_off: float) -> SetDistances:
     # Unpaired rows of the smaller set are as good as paired at the cut-off.
     near = (square + worth * (smaller - pairs))[some] / larger[some]
     number = worth * (larger - smaller)[some] / larger[some]
-    return SetDistances(
-        frames=int(some.sum()),
-        localisation=float(square.sum()),
-        missed=float(worth / 2 * (objects - pairs).sum()),
-        false=float(worth / 2 * (tracks - pairs).sum()),
-        ospa_square=float((near + number).sum()),
-        ospa_localisation=float(near.sum()),
-        ospa_cardinality=float(number.sum()),
-    )
+    out[:, 0] = some
+    out[:, 1] = square
+    out[:, 2] = worth / 2 * (objects - pairs)
+    out[:, 3] = worth / 2 * (tracks - pairs)
+    out[some, 4] = near + number
+    out[some, 5] = near
+    out[some, 6] = number
+    return out

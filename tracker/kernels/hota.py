@@ -52,8 +52,9 @@ def hota_counts(
         for e in range(len(couple)):
             possible[couple[e]] += scene.similarity[e] >= thresholds[k]
         found = np.zeros(couples, np.int64)
+        match = np.full(len(scene.truth), -1, np.int64)
         similarity[k] = _match_frames(
-            scene, couple, possible, found, object_rows, track_rows, thresholds[k]
+            scene, couple, possible, found, match, object_rows, track_rows, thresholds[k]
         )
         for g in range(couples):
             if found[g] > 0:
@@ -64,16 +65,56 @@ def hota_counts(
 
 
 @njit(cache=True)
+def hota_by_frame(
+    scene: Scene,
+    couple: NDArray[np.int64],
+    couples: int,
+    object_rows: NDArray[np.int64],
+    track_rows: NDArray[np.int64],
+    thresholds: NDArray[np.float64],
+) -> tuple[NDArray[np.int64], NDArray[np.float64], NDArray[np.float64]]:
+    """What each frame adds to `hota_counts`, with the A(c) of the whole sequence.
+
+    Arguments as there. Returns (F, K) true positives, sums of their A(c), and of their
+    similarities.
+    """
+    frames = len(scene.truth_start) - 1
+    hits = np.zeros((frames, len(thresholds)), np.int64)
+    association = np.zeros((frames, len(thresholds)))
+    similarity = np.zeros((frames, len(thresholds)))
+    for k in range(len(thresholds)):
+        possible = np.zeros(couples, np.int64)
+        for e in range(len(couple)):
+            possible[couple[e]] += scene.similarity[e] >= thresholds[k]
+        found = np.zeros(couples, np.int64)
+        match = np.full(len(scene.truth), -1, np.int64)
+        _match_frames(scene, couple, possible, found, match, object_rows, track_rows, thresholds[k])
+        for f in range(frames):
+            for t in range(scene.truth_start[f], scene.truth_start[f + 1]):
+                e = match[t]
+                if e >= 0:
+                    g = couple[e]
+                    hits[f, k] += 1
+                    association[f, k] += found[g] / (object_rows[g] + track_rows[g] - found[g])
+                    similarity[f, k] += scene.similarity[e]
+    return hits, association, similarity
+
+
+@njit(cache=True)
 def _match_frames(
     scene: Scene,
     couple: NDArray[np.int64],
     possible: NDArray[np.int64],
     found: NDArray[np.int64],
+    match: NDArray[np.int64],
     object_rows: NDArray[np.int64],
     track_rows: NDArray[np.int64],
     threshold: float,
 ) -> float:
-    """Match every frame, count true positives into `found`, return the sum of similarities."""
+    """Match every frame, count true positives into `found`, return the sum of similarities.
+
+    match : (T,) pair of each annotated row, -1 for none; filled.
+    """
     total = 0.0
     for f in range(len(scene.truth_start) - 1):
         a, b = scene.truth_start[f], scene.truth_start[f + 1]
@@ -103,6 +144,7 @@ def _match_frames(
         for i in range(b - a):
             if chosen[i] >= 0:
                 e = origin[chosen[i]]
+                match[a + i] = e
                 found[couple[e]] += 1
                 total += scene.similarity[e]
     return total

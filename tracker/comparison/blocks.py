@@ -1,0 +1,77 @@
+"""What is resampled: whole sequences, or blocks of time of all of them.
+
+Neighbouring frames have the same objects and the same errors, so single frames would make an
+interval far too narrow. Sequences are independent; where there are too few of them, blocks of
+time stand in (Künsch 1989), which have to be longer than errors usually last.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from tracker.comparison.parts import COLUMNS
+from tracker.evaluation.evaluate import Examined
+from tracker.log.model import Floats, Ints, Truth
+from tracker.results.tracks import Tracks
+
+ENOUGH_SEQUENCES = 8  # common practice, no source; fewer make a poor interval
+BLOCK_SECONDS = 5.0
+ASSUMED_RATE_HZ = 25.0
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Clock:
+    """Seconds of frame numbers: straight lines between known frames, and beyond them."""
+
+    number: Floats  # (n,) increasing
+    second: Floats  # (n,)
+
+    def at(self, number: Ints) -> Floats:
+        """(m,) seconds of these frames."""
+        if len(self.number) < 2:
+            zero = self.second[0] - self.number[0] / ASSUMED_RATE_HZ if len(self.number) else 0.0
+            return zero + number / ASSUMED_RATE_HZ
+        second = np.interp(number, self.number, self.second)
+        span, ticks = self.second[-1] - self.second[0], self.number[-1] - self.number[0]
+        before, after = number < self.number[0], number > self.number[-1]
+        second[before] += (number[before] - self.number[0]) * span / ticks
+        second[after] += (number[after] - self.number[-1]) * span / ticks
+        return second
+
+
+def clock_of(found: Examined, truth: Truth, tracks: tuple[Tracks, ...]) -> Clock:
+    """The clock of a sequence: the truth's times where it has any, else those of the tracks."""
+    if truth.time is not None and len(truth):
+        frame = found.both.numbers[
+            np.repeat(np.arange(len(found.both.numbers)), np.diff(found.counted.scene.truth_start))
+        ]
+        second = truth.time[found.both.truth_row]
+    else:
+        part = next((part for part in tracks if len(np.unique(part.frame)) > 1), tracks[0])
+        frame, second = part.frame, part.time
+    number, first = np.unique(frame, return_index=True)
+    return Clock(number.astype(np.float64), second[first])
+
+
+def sum_blocks(
+    runs: tuple[tuple[Ints, Floats], tuple[Ints, Floats]], clock: Clock, block_seconds: float
+) -> tuple[Floats, Floats]:
+    """Sums of both runs over the blocks of one sequence; blocks without any frame are left out.
+
+    runs : of each, (F,) frame numbers and (F, COLUMNS) parts.
+
+    Returns (U, COLUMNS) of both.
+    """
+    seconds = [clock.at(numbers) for numbers, _ in runs]
+    start = min((float(part.min()) for part in seconds if len(part)), default=0.0)
+    # A little slack: times that are multiples of a step are not exact in binary.
+    block = [np.floor((part - start) / block_seconds + 1e-9).astype(np.int64) for part in seconds]
+    known = np.union1d(*block)
+    sums = []
+    for (_, parts), at in zip(runs, block, strict=True):
+        out = np.zeros((len(known), COLUMNS))
+        np.add.at(out, np.searchsorted(known, at), parts)
+        sums.append(out)
+    return sums[0], sums[1]
