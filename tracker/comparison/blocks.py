@@ -7,6 +7,7 @@ time stand in (Künsch 1989), which have to be longer than errors usually last.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -41,37 +42,44 @@ class Clock:
         return second
 
 
-def clock_of(found: Examined, truth: Truth, tracks: tuple[Tracks, ...]) -> Clock:
-    """The clock of a sequence: the truth's times where it has any, else those of the tracks."""
+def clock_of(found: Examined, truth: Truth, tracks: Sequence[Tracks]) -> Clock:
+    """The clock of one run's frame numbers.
+
+    The truth's times where it has any, else its frame rate, else the times of the tracks, of those
+    first whose frame rate is known.
+    """
     if truth.time is not None and len(truth):
-        frame = found.both.numbers[
-            np.repeat(np.arange(len(found.both.numbers)), np.diff(found.counted.scene.truth_start))
-        ]
-        second = truth.time[found.both.truth_row]
-    else:
-        part = next((part for part in tracks if len(np.unique(part.frame)) > 1), tracks[0])
-        frame, second = part.frame, part.time
+        counts = np.diff(found.counted.scene.truth_start)
+        return _through(np.repeat(found.both.numbers, counts), truth.time[found.both.truth_row])
+    rate = truth.facts.frame_rate_hz
+    if rate is not None:
+        return Clock(np.array([0.0, 1.0]), np.array([0.0, 1.0 / rate]))
+    usable = [part for part in tracks if len(part) and part.frame.min() < part.frame.max()]
+    usable.sort(key=lambda part: part.facts.frame_rate_hz is None)
+    if usable:
+        return _through(usable[0].frame, usable[0].time)
+    return _through(np.zeros(0, np.int64), np.zeros(0))
+
+
+def _through(frame: Ints, second: Floats) -> Clock:
     number, first = np.unique(frame, return_index=True)
     return Clock(number.astype(np.float64), second[first])
 
 
 def sum_blocks(
-    runs: tuple[tuple[Ints, Floats], tuple[Ints, Floats]], clock: Clock, block_seconds: float
+    seconds: Sequence[Floats], parts: Sequence[Floats], block_seconds: float
 ) -> tuple[Floats, Floats]:
-    """Sums of both runs over the blocks of one sequence; blocks without any frame are left out.
+    """Sums of two runs over the blocks of one sequence; blocks without any frame are left out.
 
-    runs : of each, (F,) frame numbers and (F, COLUMNS) parts.
+    seconds : of each run, (F,) time of its frames.   parts : of each, (F, COLUMNS).
 
     Returns (U, COLUMNS) of both.
     """
-    seconds = [clock.at(numbers) for numbers, _ in runs]
     start = min((float(part.min()) for part in seconds if len(part)), default=0.0)
     # A little slack: times that are multiples of a step are not exact in binary.
     block = [np.floor((part - start) / block_seconds + 1e-9).astype(np.int64) for part in seconds]
     known = np.union1d(*block)
-    sums = []
-    for (_, parts), at in zip(runs, block, strict=True):
-        out = np.zeros((len(known), COLUMNS))
-        np.add.at(out, np.searchsorted(known, at), parts)
-        sums.append(out)
+    sums = [np.zeros((len(known), COLUMNS)) for _ in parts]
+    for out, values, at in zip(sums, parts, block, strict=True):
+        np.add.at(out, np.searchsorted(known, at), values)
     return sums[0], sums[1]

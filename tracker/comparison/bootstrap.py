@@ -5,11 +5,15 @@ formed of the sums, as overall scores are. The interval is the percentile interv
 Tibshirani 1993, ch. 13), expanded for few units: with n units the share outside each end is
 Φ(−√(n/(n−1)) t), t being the quantile of Student's distribution with n − 1 degrees of freedom
 (Hesterberg 2015, "What teachers should know about the bootstrap"; form from memory). Without that,
-intervals of 8 units hold the truth in 88% of cases instead of 95%, and so do BCa intervals.
+95% intervals of 8 units hold the truth in 88% of cases, and so do BCa intervals.
+
+Below some number of units there is no interval: if both runs were equally good, n units would all
+favour the same one with probability 2^(1−n) (sign test), and resampling would call that certain.
 """
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 
@@ -49,6 +53,11 @@ def check_resampling(resamples: int, confidence: float, block_seconds: float | N
         raise UsageError(f"a block is longer than 0 seconds, not {block_seconds}")
 
 
+def units_needed(confidence: float) -> int:
+    """The fewest units that can show a difference: 2^(1−n) ≤ 1 − confidence."""
+    return math.ceil(1.0 - math.log2(1.0 - confidence) - 1e-9)
+
+
 def resample(
     runs: tuple[Floats, Floats], names: Sequence[str], kinds: frozenset[Kind], plan: Resampling
 ) -> tuple[Floats, Floats]:
@@ -78,7 +87,7 @@ def interval(values: Floats, confidence: float, units: int) -> tuple[float, floa
     Resamples without a value are left out, up to half of them.
     """
     known = values[np.isfinite(values)]
-    if units < 2 or 2 * len(known) < len(values):
+    if units < units_needed(confidence) or 2 * len(known) < len(values):
         return None
     tail = norm.cdf(np.sqrt(units / (units - 1)) * student.ppf((1.0 - confidence) / 2, units - 1))
     lower, upper = np.quantile(known, (tail, 1.0 - tail))

@@ -15,6 +15,7 @@ from tracker.comparison.bootstrap import (
     interval,
     resample,
     share_above,
+    units_needed,
 )
 from tracker.comparison.model import COMPARED, LOWER_BETTER, Change, Comparison
 from tracker.comparison.objects import ObjectChange, object_changes
@@ -84,7 +85,8 @@ def compare(
         seed,
     )
     overall = _changes(a.overall, b.overall)
-    if plan.units > 1:
+    enough = plan.units >= units_needed(confidence)
+    if enough:
         overall = _with_intervals(overall, (units[0], units[1]), a.overall, plan)
     return Comparison(
         a,
@@ -93,7 +95,7 @@ def compare(
         {name: _changes(*item.scores) for name, item in found.items()},
         tuple(change for item in found.values() for change in item.objects),
         {name: item.parting for name, item in found.items()},
-        plan if plan.units > 1 else None,
+        plan if enough else None,
         tuple(_notes(plan)),
     )
 
@@ -110,12 +112,11 @@ def _compare_one(
     examined = [examine(tracks, truth, scope, with_referee=with_referee) for tracks in (a, b)]
     rows = [truth_rows(found) for found in examined]
     parts = [frame_parts(found, seen) for found, seen in zip(examined, rows, strict=True)]
-    numbers = [found.both.numbers for found in examined]
-    clock = clock_of(examined[0], truth, (a, b))
+    seconds = [clock_of(found, truth, (a, b)).at(found.both.numbers) for found in examined]
     return _Sequence(
         (examined[0].scores, examined[1].scores),
-        sum_blocks(((numbers[0], parts[0]), (numbers[1], parts[1])), clock, block_seconds),
-        object_changes(name, truth, numbers[0], (rows[0], rows[1])),
+        sum_blocks(seconds, parts, block_seconds),
+        object_changes(name, truth, examined[0].both.numbers, (rows[0], rows[1])),
         find_parting(a, b, scope.for_truth(truth)),
     )
 
@@ -154,9 +155,15 @@ def _with_intervals(
 
 
 def _notes(plan: Resampling) -> Iterable[str]:
-    what = "sequences" if plan.unit == "sequence" else f"blocks of {plan.block_seconds:g} s"
-    if plan.units < 2:
-        yield f"there are no intervals: fewer than two {what} to draw from"
+    sequences = plan.unit == "sequence"
+    what = "sequences" if sequences else f"blocks of {plan.block_seconds:g} s"
+    needed = units_needed(plan.confidence)
+    if plan.units < needed:
+        yield (
+            f"no intervals: {plan.units} {what} cannot show a difference at "
+            f"{100 * plan.confidence:g}% confidence, it takes {needed}; give more sequences, or a "
+            "--block-seconds that is still longer than errors last"
+        )
     elif plan.units < ENOUGH_SEQUENCES:
         yield (
             f"only {plan.units} {what} to draw from: take the intervals as a rough guide; more "

@@ -41,10 +41,12 @@ class Change:
 
     @property
     def verdict(self) -> str:
-        """`better` or `worse` where the interval leaves 0 out, `no clear difference` else, and
-        `unknown` without one."""
+        """`better` or `worse` where the interval leaves 0 out, `no clear difference` else, `same`
+        where nothing differs in any resample, and `unknown` without an interval."""
         if self.lower is None or self.upper is None:
             return "unknown"
+        if self.difference == self.lower == self.upper == 0.0:
+            return "same"
         if self.lower <= 0.0 <= self.upper:
             return "no clear difference"
         return "better" if (self.lower > 0.0) != (self.score in LOWER_BETTER) else "worse"
@@ -60,7 +62,7 @@ class Comparison:
     a, b : their scores.   overall : changes by score, with intervals.   sequences : changes of
     each sequence.   objects : every object of the truth, in order of sequence, then file.
     partings : where the runs part, by sequence.   resampling : what the intervals come from, None
-    where there were not two units to draw from.
+    where there were too few units to draw from.
     """
 
     a: Evaluation
