@@ -5,7 +5,7 @@ from __future__ import annotations
 import csv
 
 from tests.evaluation.made import make_tracks, make_truth, standing
-from tracker.comparison import compare, worst_first, write_objects
+from tracker.comparison import ObjectChange, compare, worst_first, write_objects
 
 FRAMES = range(1, 11)
 TRUTH = make_truth(
@@ -76,3 +76,27 @@ def test_sums_over_objects_are_the_counts():
             ("fragments", counts.fragmentations),
         ):
             assert sum(getattr(item, f"{column}_{side}") for item in found.objects) == wanted
+
+
+def change(name, **counts):
+    same = {"covered": 5, "own_track": 5, "switches": 1, "fragments": 1}
+    values = {f"{k}_{side}": v for k, v in same.items() for side in "ab"} | counts
+    return ObjectChange("s", name, "", 9, 1, 9, **values, first_difference=1)
+
+
+def test_what_counts_as_worse():
+    """Frames on the own track first, then frames covered, then switches, then fragments."""
+    changes = [
+        change("better", fragments_b=0),
+        change("same"),
+        change("fragments", fragments_b=2, switches_b=1),
+        change("switches", switches_b=2, fragments_b=0),
+        change("covered", covered_b=4, switches_b=0),
+        change("own", own_track_b=4, covered_b=9),
+        change("more own", own_track_b=3),
+    ]
+    assert [item.object for item in worst_first(changes)] == [
+        "more own", "own", "covered", "switches", "fragments", "same", "better",
+    ]  # fmt: skip
+    verdicts = [item.verdict for item in changes]
+    assert verdicts == ["better", "same", *["worse"] * 5]

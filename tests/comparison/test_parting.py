@@ -104,7 +104,23 @@ def test_lines_tell_rows_that_lie_on_each_other():
     assert (found.frame, found.by) == (3, "line")
 
 
+def test_by_place_the_closest_row_counts_not_the_last_one():
+    """Two boxes that overlap: a swap shows at once, though each could stay with the other."""
+    close = sorted(standing(FRAMES, 1) + standing(FRAMES, 2, left=2.0))
+    swapped = sorted((f, 3 - k if f > 2 else k, *rest) for f, k, *rest in close)
+    found = part(close, swapped, lines=False)
+    assert (found.frame, len(found.differences)) == (3, 2)
+
+
 def test_lines_of_another_log_are_not_trusted():
+    a = with_lines(make_tracks(TWO))
+    # Lines are one frame late; nothing moves, so each common line lies on itself.
+    late = replace(a, line=a.line + 1000)
+    found = find_parting(a, late, Scope())
+    assert (found.by, found.frame) == ("place", None)
+
+
+def test_lines_that_lie_elsewhere_are_not_trusted():
     a = with_lines(make_tracks(TWO))
     other_frame = replace(a, line=np.arange(len(a)))
     other_place = replace(a, line=a.line[np.argsort(a.frame * 10 + 3 - a.track)])

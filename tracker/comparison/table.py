@@ -88,10 +88,10 @@ def objects_table(found: Comparison, limit: int) -> str:
     several = len(found.sequences) > 1
     rows = [
         (*(("sequence",) if several else ()), "object", "label", "frames", "own track", "covered",
-         "switches", "fragments", "first differs", ""),
+         "switches", "fragments", "from frame", ""),
     ]  # fmt: skip
     for item in changed[:limit]:
-        first = "-" if item.first_difference is None else f"frame {item.first_difference}"
+        first = "-" if item.first_difference is None else str(item.first_difference)
         rows.append(
             (
                 *((item.sequence,) if several else ()),
