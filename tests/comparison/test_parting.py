@@ -69,8 +69,8 @@ def test_identities_that_change_places(lines):
     ]  # fmt: skip
     first = found.differences[0]
     assert (first.known_a, first.known_b) == (2, 11)
-    assert "A's track 1, which was B's 11 until then" in first.words
-    assert "B's track 12, which was A's 2 until then" in first.words
+    assert "A's track 1 (until then B's 11)" in first.words
+    assert "B's track 12 (until then A's 2)" in first.words
 
 
 def test_a_new_identity_in_one_run():
@@ -81,9 +81,9 @@ def test_a_new_identity_in_one_run():
     assert (only.kind, only.track_a, only.track_b) == ("identity", 2, 9)
     assert only.line is not None
     # 9 is new in B: nothing was known of it.
-    assert only.words.endswith("and B's track 9")
+    assert only.words.endswith("is A's track 2 (until then B's 2) and B's track 9")
     (other,) = part(broken, TWO).differences
-    assert other.words.endswith("is A's track 9, and B's track 2, which was A's 2 until then")
+    assert other.words.endswith("is A's track 9 and B's track 2 (until then A's 2)")
 
 
 def test_two_tracks_of_one_run_for_one_of_the_other():

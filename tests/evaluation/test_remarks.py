@@ -8,7 +8,7 @@ import pytest
 
 from tests.evaluation.made import make_tracks, make_truth, random_scene, standing
 from tracker.evaluation import Evaluation, Scope, evaluate, evaluate_all
-from tracker.evaluation.remarks import LISTED, remarks
+from tracker.evaluation.remarks import LISTED, remarks, told_once
 from tracker.evaluation.table import details_table, scores_table
 from tracker.log import Kind, Rejection
 from tracker.log.model import Truth
@@ -57,6 +57,19 @@ def test_nothing_scored_is_said():
 
 def test_no_match_is_said():
     assert "no track is ever on an object" in said(make_truth(standing([1, 2], 7, left=500.0)))
+
+
+@pytest.mark.parametrize(
+    ("given", "told"),
+    [
+        ({}, []),
+        ({"a": ["x", "y"]}, ["a: x", "a: y"]),
+        ({"a": ["x", "y"], "b": ["x"]}, ["all sequences: x", "a: y"]),
+        ({"a": ["x"], "b": []}, ["a: x"]),
+    ],
+)
+def test_what_is_said_of_all_is_said_once(given, told):
+    assert list(told_once(given)) == told
 
 
 @pytest.fixture(scope="module")

@@ -129,7 +129,7 @@ def compare(
         settings_table,
     )
     from tracker.evaluation.junit import write_junit
-    from tracker.evaluation.remarks import remarks
+    from tracker.evaluation.remarks import remarks, told_once
     from tracker.evaluation.table import CAUTION
     from tracker.results import is_run
 
@@ -169,11 +169,16 @@ def compare(
     runs = {name: pair for name, pair in paths.items() if all(map(is_run, pair))}
     settings = changed_settings(runs)
     judgements = judge(found.overall, tolerances, by_interval=by_interval)
-    for name in names:
-        said = [list(remarks(truths[name], scopes[name], side.sequences[name]))
-                for side in (found.a, found.b)]  # fmt: skip
-        for sentence in dict.fromkeys(said[0] + said[1]):
-            typer.echo(f"{name}: {sentence}", err=True)
+    said = {
+        name: dict.fromkeys(
+            sentence
+            for side in (found.a, found.b)
+            for sentence in remarks(truths[name], scopes[name], side.sequences[name])
+        )
+        for name in names
+    }
+    for sentence in told_once({name: list(own) for name, own in said.items()}):
+        typer.echo(sentence, err=True)
     for sentence in found.notes:
         typer.echo(f"note: {sentence}", err=True)
     if json_:

@@ -134,7 +134,7 @@ def evaluate(
     from tracker.evaluation.consistency import check_run, checks_table
     from tracker.evaluation.junit import write_junit
     from tracker.evaluation.limits import judge, parse_limit, read_limits, verdict_table
-    from tracker.evaluation.remarks import remarks
+    from tracker.evaluation.remarks import remarks, told_once
     from tracker.evaluation.table import (
         CAUTION,
         DETAILS_LEGEND,
@@ -180,9 +180,12 @@ def evaluate(
         workers=workers,
         watch=lambda done, total: watched(done, total=total, label="sequences"),
     )
-    for name, scores in found.sequences.items():
-        for sentence in remarks(truths[name], scopes[name], scores):
-            typer.echo(f"{name}: {sentence}", err=True)
+    said = {
+        name: list(remarks(truths[name], scopes[name], scores))
+        for name, scores in found.sequences.items()
+    }
+    for sentence in told_once(said):
+        typer.echo(sentence, err=True)
     honest = (
         {name: check_run(sources[name][0], truths[name], scopes[name]) for name in truths}
         if consistency

@@ -15,6 +15,9 @@ from tracker.errors import OutputError
 from tracker.log.model import Ints, Truth
 from tracker.results.folder import atomic_file
 
+# What is summed up of an object's rows; an object differs where one of them does.
+COUNTED = ("paired", "own", "switched", "resumed")
+
 
 @dataclass(frozen=True, slots=True)
 class ObjectChange:
@@ -22,8 +25,8 @@ class ObjectChange:
 
     frames : annotated and scored.   covered : of them, paired with any track.   own_track : of
     them, on the one track that the identity metrics give it over the whole sequence.
-    first_difference : the first frame in which the runs disagree about one of those two, None if
-    they never do.
+    first_difference : the first frame in which the runs disagree about one of them, or about a
+    switch or a new fragment; None if they never do.
     """
 
     sequence: str
@@ -61,7 +64,7 @@ class ObjectChange:
 
     @property
     def changed(self) -> bool:
-        return self.verdict != "same" or self.first_difference is not None
+        return self.first_difference is not None
 
     def as_dict(self) -> dict[str, Any]:
         return asdict(self) | {"verdict": self.verdict}
@@ -78,7 +81,7 @@ def object_changes(
         rows[0].truth_row, rows[1].truth_row, assume_unique=True, return_indices=True
     )
     a, b = rows
-    apart = (a.paired[at_a] != b.paired[at_b]) | (a.own[at_a] != b.own[at_b])
+    apart = np.any([getattr(a, n)[at_a] != getattr(b, n)[at_b] for n in COUNTED], axis=0)
     frame = numbers[a.frame[at_a]]
     who = truth.object[a.truth_row[at_a]]
     label = truth.label[a.truth_row[at_a]]

@@ -56,10 +56,10 @@ class Difference:
             return f"only {run} reports {row} at ({at}), as its track {track}"
         text = f"{row} at ({at}) is A's track {self.track_a}"
         if self.known_b is not None and self.known_b != self.track_b:
-            text += f", which was B's {self.known_b} until then"
-        text += f", and B's track {self.track_b}"
+            text += f" (until then B's {self.known_b})"
+        text += f" and B's track {self.track_b}"
         if self.known_a is not None and self.known_a != self.track_a:
-            text += f", which was A's {self.known_a} until then"
+            text += f" (until then A's {self.known_a})"
         return text
 
     def as_dict(self) -> dict[str, Any]:

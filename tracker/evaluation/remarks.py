@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping, Sequence
 
 from tracker.evaluation.scope import Scope
 from tracker.evaluation.scores import Scores
@@ -41,3 +41,14 @@ def remarks(truth: Truth, scope: Scope, scores: Scores) -> Iterator[str]:
             "note: no track is ever on an object; are frame numbers and coordinates those of this "
             "truth?"
         )
+
+
+def told_once(said: Mapping[str, Sequence[str]]) -> Iterator[str]:
+    """The sentences about each sequence with its name; what is said of all of them once."""
+    common = [
+        text for text in next(iter(said.values()), ()) if all(text in own for own in said.values())
+    ]
+    if len(said) > 1:
+        yield from (f"all sequences: {text}" for text in common)
+    for name, own in said.items():
+        yield from (f"{name}: {text}" for text in own if len(said) == 1 or text not in common)
