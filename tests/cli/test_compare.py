@@ -54,10 +54,11 @@ def test_batches(capsys, runs):
     assert parts[0] == f"A: {runs / 'old'}\nB: {runs / 'new'}"
     assert parts[1].splitlines()[0].split()[:3] == ["score", "A", "B"]
     assert "200 resamples of 11 blocks of 1 s, seed 0" in parts[1]
-    assert "gate.probability  0.5  0.999" in parts[2]
-    assert "the runs part in frame" in parts[3]
-    assert "margent explain" in parts[3]
-    assert parts[4].startswith("objects: ")
+    assert [line.split()[0] for line in parts[2].splitlines()] == ["sequence", *NAMES]
+    assert "gate.probability  0.5  0.999" in parts[3]
+    assert "the runs part in frame" in parts[4]
+    assert "margent explain" in parts[4]
+    assert parts[5].startswith("objects: ")
     assert "personal data" in err
     assert "better" in out
 
@@ -161,14 +162,14 @@ def test_objects(capsys, runs, tmp_path):
     file = tmp_path / "objects.csv"
     code, out, _ = compared(capsys, *words, "--show-objects", 2, "--objects", file)
     assert code == 0
-    section = out.split("\n\n")[4].splitlines()
+    section = out.split("\n\n")[5].splitlines()
     assert len(section) == 5
     assert section[-1].startswith("and ")
     rows = list(csv.DictReader(file.read_text("utf-8").splitlines()))
     # The sequences have 8 and 10 objects (motmetrics' README).
     assert len(rows) == 18
     none = compared(capsys, *words, "--show-objects", 0)[1]
-    assert len(none.split("\n\n")[4].splitlines()) == 1
+    assert len(none.split("\n\n")[5].splitlines()) == 1
 
 
 def test_options_of_evaluate(capsys, tmp_path):
@@ -242,6 +243,22 @@ def test_settings_of_another_version(capsys, runs, tmp_path):
     assert code == 0
     assert "foresight.horizon_seconds  -  2.0" in out
     assert "zones[0].name" in out
+
+
+def test_what_the_runs_were_made_from(capsys, runs, tmp_path):
+    other = tmp_path / "other"
+    shutil.copytree(runs / "new" / NAMES[0], other)
+    facts = json.loads((other / "run.json").read_text("utf-8"))
+    facts["input"]["sha256"] = "0"
+    facts["versions"]["margent"] = "9.9.9"
+    (other / "run.json").write_text(json.dumps(facts), "utf-8")
+    words = (runs / "new" / NAMES[0], other, "--truth", CAMPUS / "gt.txt", *QUICK)
+    code, out, err = compared(capsys, *words, "--json")
+    assert code == 0
+    assert "the runs were made from different logs: TUD-Campus" in err
+    assert "B by 9.9.9" in err
+    assert len(json.loads(out)["notes"]) == 3  # and that there are too few blocks
+    assert "different logs" not in compared(capsys, words[0], *words[:1], *words[2:])[2]
 
 
 def test_rejected_truth_is_listed_once_and_strict_stops(capsys, tmp_path):

@@ -12,6 +12,7 @@ from tracker.comparison.table import (
     explain_commands,
     objects_table,
     partings_text,
+    sequences_table,
     settings_table,
 )
 
@@ -99,7 +100,7 @@ def test_tables_fit_100_columns():
         other, _ = random_scene(seed + 50, frames=60, objects=20)
         sequences[f"forecourt-{seed:05d}"] = (tracks, other, truth)
     found = compare(sequences, resamples=100)
-    for text in (changes_table(found), objects_table(found, 20)):
+    for text in (changes_table(found), sequences_table(found), objects_table(found, 20)):
         assert max(map(len, text.splitlines())) <= 100
     assert len(objects_table(found, 20).splitlines()) == 23
     assert len(objects_table(found, 0).splitlines()) == 1

@@ -112,6 +112,7 @@ def compare(
     from tracker.cli.sequences import pairs_by_name, truths_by_name
     from tracker.comparison import (
         changed_settings,
+        changed_sources,
         judge,
         parse_tolerance,
         write_objects,
@@ -126,6 +127,7 @@ def compare(
         objects_table,
         partings_text,
         resampling_words,
+        sequences_table,
         settings_table,
     )
     from tracker.evaluation.junit import write_junit
@@ -179,10 +181,11 @@ def compare(
     }
     for sentence in told_once({name: list(own) for name, own in said.items()}):
         typer.echo(sentence, err=True)
-    for sentence in found.notes:
+    notes = [*changed_sources(runs), *found.notes]
+    for sentence in notes:
         typer.echo(f"note: {sentence}", err=True)
     if json_:
-        answer = {"a": str(run_a), "b": str(run_b)} | found.as_dict()
+        answer = {"a": str(run_a), "b": str(run_b)} | found.as_dict() | {"notes": notes}
         for name, parting in found.partings.items():
             answer["partings"][name]["commands"] = explain_commands(parting, paths[name])
         answer["settings"] = [item.as_dict() for item in settings]
@@ -193,6 +196,8 @@ def compare(
         typer.echo(f"A: {run_a}\nB: {run_b}\n\n{changes_table(found)}")
         if found.resampling is not None:
             typer.echo(resampling_words(found))
+        if len(pairs) > 1:
+            typer.echo("\n" + sequences_table(found))
         if runs:
             typer.echo("\n" + settings_table(settings, len(runs)))
         typer.echo("\n" + partings_text(found, paths))

@@ -1,7 +1,7 @@
 """Is one run better than another, and where?"""
 
 from tracker.comparison.bootstrap import Resampling
-from tracker.comparison.changed_settings import ChangedSetting, changed_settings
+from tracker.comparison.changed_settings import ChangedSetting, changed_settings, changed_sources
 from tracker.comparison.compare import compare
 from tracker.comparison.model import COMPARED, LOWER_BETTER, Change, Comparison
 from tracker.comparison.objects import ObjectChange, worst_first, write_objects
@@ -21,6 +21,7 @@ __all__ = [
     "Resampling",
     "Tolerance",
     "changed_settings",
+    "changed_sources",
     "compare",
     "judge",
     "parse_tolerance",

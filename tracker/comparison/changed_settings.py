@@ -1,4 +1,4 @@
-"""Which settings differ between two runs."""
+"""Which settings differ between two runs, and what else they were made from."""
 
 from __future__ import annotations
 
@@ -7,6 +7,7 @@ from dataclasses import asdict, dataclass
 from pathlib import Path
 from typing import Any
 
+from tracker.results.read import read_facts
 from tracker.settings.reading import read_toml
 
 SETTINGS_FILE = "settings.toml"
@@ -49,6 +50,24 @@ def changed_settings(runs: Mapping[str, tuple[Path, Path]]) -> list[ChangedSetti
         ChangedSetting(setting, a, b, tuple(names))
         for (setting, _, _), (a, b, names) in found.items()
     ]
+
+
+def changed_sources(runs: Mapping[str, tuple[Path, Path]]) -> list[str]:
+    """Sentences about runs that were made from different logs or by different versions.
+
+    Raises InputError for a run.json that cannot be read.
+    """
+    logs, versions = [], set()
+    for name, folders in runs.items():
+        a, b = (read_facts(folder) for folder in folders)
+        if a.get("input", {}).get("sha256") != b.get("input", {}).get("sha256"):
+            logs.append(name)
+        versions.add(tuple(facts.get("versions", {}).get("margent", "?") for facts in (a, b)))
+    out = []
+    if logs:
+        out.append(f"the runs were made from different logs: {', '.join(logs)}")
+    out += [f"A was made by margent {a}, B by {b}" for a, b in sorted(versions) if a != b]
+    return out
 
 
 def _flat(values: Mapping[str, Any], prefix: str = "") -> Iterator[tuple[str, Any]]:

@@ -22,6 +22,7 @@ SHOWN = {
     "false_positives": "false positives", "misses": "misses", "mostly_tracked": "mostly tracked",
     "mostly_lost": "mostly lost", "gospa": "GOSPA", "ospa": "OSPA",
 }  # fmt: skip
+BY_SEQUENCE = ("idf1", "hota", "mota", "switches")
 LISTED = 5  # differences of a frame, sequences that part, sequences of a setting
 LEGEND = (
     "Differences of ratios are in percentage points. MOTP, GOSPA and OSPA are distances: lower is "
@@ -49,6 +50,15 @@ def changes_table(found: Comparison) -> str:
             )
         )
     return _aligned(rows, "<>>>>><")
+
+
+def sequences_table(found: Comparison) -> str:
+    """The main scores of each sequence in A and B."""
+    rows = [("sequence", *(SHOWN[name] for name in BY_SEQUENCE), "IDF1, B - A")]
+    for name, changes in found.sequences.items():
+        cells = [f"{_value(n, changes[n].a)} → {_value(n, changes[n].b)}" for n in BY_SEQUENCE]
+        rows.append((name, *cells, _difference("idf1", changes["idf1"].difference)))
+    return _aligned(rows, "<" + ">" * (len(BY_SEQUENCE) + 1))
 
 
 def resampling_words(found: Comparison) -> str:
@@ -98,15 +108,15 @@ def objects_table(found: Comparison, limit: int) -> str:
                 item.object,
                 item.label,
                 f"{item.frames}",
-                f"{item.own_track_a} > {item.own_track_b}",
-                f"{item.covered_a} > {item.covered_b}",
-                f"{item.switches_a} > {item.switches_b}",
-                f"{item.fragments_a} > {item.fragments_b}",
+                f"{item.own_track_a} → {item.own_track_b}",
+                f"{item.covered_a} → {item.covered_b}",
+                f"{item.switches_a} → {item.switches_b}",
+                f"{item.fragments_a} → {item.fragments_b}",
                 first,
                 item.verdict,
             )
         )
-    lines = [f"{title}, A > B, greatest loss first:", _aligned(rows, "<" * several + "<<>>>>>><")]
+    lines = [f"{title}, A → B, greatest loss first:", _aligned(rows, "<" * several + "<<>>>>>><")]
     if len(changed) > limit:
         lines.append(f"and {len(changed) - limit} more (--show-objects, --objects FILE, --json)")
     return "\n".join(lines)
