@@ -171,6 +171,10 @@ def test_coasting(capsys, tmp_path):
         (["{test}", "--truth", "{here}"], "no truth for the sequence 'test'"),
         (["{test}", "--truth", "{points}"], "the tracks are boxes, the truth points"),
         (["{test}", "--truth", "tset={gt}"], "there is no sequence 'tset' here (test)"),
+        (
+            ["{test}", "--truth", "{gt}", "--ignore-region", "tset={gt}"],
+            "--ignore-region: there is no sequence 'tset' here (test)",
+        ),
     ],
 )
 def test_wrong_use_is_a_sentence_and_exit_code_2(words, sentence, capsys, tmp_path):

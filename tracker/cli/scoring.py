@@ -115,6 +115,10 @@ def _with_regions(scope: Scope, names: list[str], given: list[str]) -> dict[str,
     for text in given:
         name, equals, file = text.partition("=")
         one = bool(equals) and name in names
+        if equals and not one and not Path(text).exists() and Path(file).exists():
+            raise UsageError(
+                f"--ignore-region: there is no sequence '{name}' here ({', '.join(names)})"
+            )
         regions = read_regions(Path(file if one else text))
         for target in [name] if one else names:
             own = scopes[target]
