@@ -20,7 +20,7 @@ from tracker.comparison.bootstrap import (
 from tracker.comparison.model import COMPARED, LOWER_BETTER, Change, Comparison
 from tracker.comparison.objects import ObjectChange, object_changes
 from tracker.comparison.parting import Parting, find_parting
-from tracker.comparison.parts import COLUMNS, frame_parts
+from tracker.comparison.parts import COLUMNS, OF_OBJECTS, frame_parts
 from tracker.comparison.rows import truth_rows
 from tracker.evaluation.evaluate import Evaluation, check_choices, examine, scope_of_each
 from tracker.evaluation.processes import in_processes
@@ -145,7 +145,10 @@ def _with_intervals(
     out = {}
     for k, (name, change) in enumerate(changes.items()):
         gain = values_b[:, k] - values_a[:, k]
-        ends = None if change.difference is None else interval(gain, plan.confidence, plan.units)
+        known = change.difference is not None and (
+            plan.unit == "sequence" or name not in OF_OBJECTS
+        )
+        ends = interval(gain, plan.confidence, plan.units) if known else None
         if ends is None:
             out[name] = change
             continue

@@ -5,7 +5,7 @@ identity metrics and HOTA match objects and tracks globally, so a stretch scored
 be matched otherwise and its counts would not add up. Here IDTP, IDFP and IDFN are counted frame by
 frame under the global matching, and every true positive of HOTA brings its A(c) along. What
 belongs to an object as a whole (the object itself, mostly tracked and lost) is counted in its first
-annotated frame.
+annotated frame, so that it adds up; blocks of time say nothing about how sure it is.
 """
 
 from __future__ import annotations
@@ -26,6 +26,7 @@ from tracker.log.model import Floats, Ints, Kind
 
 COUNTS = tuple(item.name for item in fields(Counts))
 WHOLE = tuple(isinstance(item.default, int) for item in fields(Counts))
+OF_OBJECTS = ("objects", "mostly_tracked", "partially_tracked", "mostly_lost")
 _K = len(THRESHOLDS)
 # Columns: the fields of `Counts`, then hits, association, similarity of HOTA, then `SetDistances`.
 ENDS = np.cumsum([len(COUNTS), _K, _K, _K])
