@@ -220,3 +220,15 @@ def test_uncoupled_axes_give_the_same_bits_either_way(kernels, d):
         assert np.array_equal(short.mean, full.mean)
         assert np.array_equal(short.covariance, full.covariance)
         assert kernels.distance(short, 3, 4, coupled=False) == kernels.distance(full, 3, 4)
+
+
+def test_sizes_shrink_by_half_at_most():
+    states = random_states(9, 60, 4)
+    mean = states.mean.copy()
+    mean[:, 2:4] = np.abs(mean[:, 2:4])  # sizes before the step
+    kalman.predict_constant_velocity(mean, states.covariance.copy(), 3.0, states.density, True)
+    expected = twin.bound_shrinking(mean, 2, 3.0)
+    assert (expected != mean).any()
+    kalman.bound_shrinking(mean, 2, 3.0)
+    np.testing.assert_array_equal(mean, expected)
+    assert (mean[:, 2:4] > 0.0).all()

@@ -159,3 +159,13 @@ def test_near_and_far_boxes_are_treated_alike():
     large_mean, large_covariance = run(motion, 8.0 * boxes, times)
     assert np.array_equal(large_mean, 8.0 * mean)
     assert np.array_equal(large_covariance, 64.0 * covariance)
+
+
+def test_a_coasting_box_keeps_a_size():
+    """One that shrank while it was seen does not turn inside out when it is not."""
+    model = ConstantVelocity(Settings(), Kind.BOX)
+    mean = np.array([[50.0, 50.0, 20.0, 40.0, 0.0, 0.0, -9.0, -15.0]])
+    covariance = np.eye(8)[np.newaxis].copy()
+    for _ in range(200):
+        model.predict(mean, covariance, 0.1)
+        assert (mean[0, 2:4] > 0.0).all()

@@ -36,6 +36,17 @@ def predict_constant_velocity(mean, covariance, step, density):
     return new_mean, new_covariance
 
 
+def bound_shrinking(mean, first, step_seconds):
+    """The means with no size below half of what it was before the step."""
+    out = np.array(mean)
+    d = out.shape[1] // 2
+    before = out[:, :d] - step_seconds * out[:, d:]
+    for i, a in np.argwhere(out[:, :d] < 0.5 * before):
+        if a >= first:
+            out[i, a], out[i, d + a] = 0.5 * before[i, a], 0.0
+    return out
+
+
 def update_constant_velocity(mean, covariance, pairing, z, variance):
     """Corrected copies of mean and covariance, all components of a measurement at once."""
     new_mean, new_covariance = mean.copy(), covariance.copy()

@@ -67,6 +67,22 @@ def predict_constant_velocity(
 
 
 @njit(cache=True)
+def bound_shrinking(mean: NDArray[np.float64], first: int, step_seconds: float) -> None:
+    """Let no size of a predicted box fall below half of what it was, in place.
+
+    mean : (n, 2d) just predicted; components from `first` on are sizes. A size that would shrink
+    further is held at half and its rate becomes 0: a box that coasts does not turn inside out.
+    """
+    d = mean.shape[1] // 2
+    for i in range(len(mean)):
+        for a in range(first, d):
+            half = 0.5 * (mean[i, a] - step_seconds * mean[i, d + a])
+            if mean[i, a] < half:
+                mean[i, a] = half
+                mean[i, d + a] = 0.0
+
+
+@njit(cache=True)
 def update_constant_velocity(
     mean: NDArray[np.float64],
     covariance: NDArray[np.float64],

@@ -8,6 +8,7 @@ from tracker.errors import KernelError, SettingsError, UsageError
 from tracker.kernels.joint_update import Mixture, joint_update
 from tracker.kernels.kalman import (
     UPDATE_OK,
+    bound_shrinking,
     initiate_constant_velocity,
     predict_constant_velocity,
     update_constant_velocity,
@@ -32,7 +33,7 @@ class ConstantVelocity:
 
     def __init__(self, settings: Settings, kind: Kind) -> None:
         motion, measurement = settings.motion, settings.measurement
-        boxes = kind is Kind.BOX
+        self._boxes = boxes = kind is Kind.BOX
         if measurement.unit == "box-scales" and not boxes:
             raise SettingsError(
                 "box scales need boxes, these are points; set it to 'absolute' or 'auto'",
@@ -56,6 +57,8 @@ class ConstantVelocity:
             return
         density = axis_squares(mean, self.dimension, *self._density)
         predict_constant_velocity(mean, covariance, step_seconds, density, self.coupled)
+        if self._boxes:
+            bound_shrinking(mean, 2, step_seconds)
 
     def measurement_variance(self, z: Floats, sigma: Floats | None) -> Floats:
         """(m, d) variances of detections: from their sigmas, where nan or none from the settings.
