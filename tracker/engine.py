@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tracker.association import TierDecision, associate
+from tracker.association.detectability import Detectability
 from tracker.association.marginals import Marginals, mixture, tier_marginals
 from tracker.association.rule import association_rules
 from tracker.errors import InputError, UsageError
@@ -52,13 +53,15 @@ class Prediction:
 
     estimate : (k, d) predicted measurement, covariance : (k, d, d) of it without measurement
     noise.   state : (k,) lifecycle state before the frame.   unseen : (k,) seconds since the
-    last detection.   variance : (m, d) measurement variances of the detections.
+    last detection.   detected : (k,) P_D of each.   variance : (m, d) measurement variances of the
+    detections.
     """
 
     estimate: Floats
     covariance: Floats
     state: NDArray[np.int8]
     unseen: Floats
+    detected: Floats
     variance: Floats
 
 
@@ -138,6 +141,8 @@ class Engine:
         life = self.settings.lifecycle
         self._test = evidence_test(life) if life.rule == "evidence" else None
         self._exits = exits_of(facts, self.kind, life.exit_share)
+        hidden = self.settings.sensor.hidden_below is not None
+        self._hidden = Detectability(self.settings, self.kind) if hidden else None
         self._joint = self.settings.association.mode == "joint-probabilistic"
         # Weight of the past in the tracks' embeddings; None if no tier looks at appearance.
         self._memory = next(
@@ -170,11 +175,12 @@ class Engine:
             left = self._exits.left(table)
             if left is not None:
                 transitions.append(self._end(left, Reason.LEFT_VIEW))
+        detected = None if self._hidden is None else self._hidden.of(table)
         tiers, pairing = associate(
-            self.rules, table, frame, variance, self.motion.coupled, self.explain
+            self.rules, table, frame, variance, self.motion.coupled, self.explain, detected
         )
         considered = table.identity.copy()
-        prediction = self._prediction(frame, variance) if self.explain else None
+        prediction = self._prediction(frame, variance, detected) if self.explain else None
         if self.explain:
             self._weigh(tiers)
 
@@ -240,11 +246,13 @@ class Engine:
             table.keep(~gone)
         return ended
 
-    def _prediction(self, frame: Frame, variance: Floats) -> Prediction:
+    def _prediction(self, frame: Frame, variance: Floats, detected: Floats | None) -> Prediction:
         table = self.table
         estimate, _, covariance = measured_part(table.mean, table.covariance, self.kind.dimension)
         unseen = frame.time - table.last_seen
-        return Prediction(estimate, covariance, table.state.copy(), unseen, variance)
+        if detected is None:
+            detected = np.full(len(table), self.settings.sensor.detection_probability)
+        return Prediction(estimate, covariance, table.state.copy(), unseen, detected, variance)
 
     def _correct_jointly(
         self, tiers: tuple[TierDecision, ...], frame: Frame, variance: Floats

@@ -143,6 +143,7 @@ class Ledger:
             "track": result.considered,
             "state": seen.state,
             "unseen_seconds": seen.unseen,
+            "detection_probability": seen.detected,
         }
         for k, name in enumerate(self._names):
             columns[name] = seen.estimate[:, k]

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from tracker.association.cost import candidate_costs
 from tracker.association.pairs import CandidatePairs
-from tracker.association.rule import AssociationRule
+from tracker.association.rule import AssociationRule, miss_costs
 from tracker.errors import CertificateError, InputError, KernelError
 from tracker.kernels.assignment import Problem
 from tracker.kernels.components import Components, label_components
@@ -76,17 +76,21 @@ def associate(
     variance: Floats,
     coupled: bool,
     explain: bool,
+    detected: Floats | None = None,
 ) -> tuple[tuple[TierDecision, ...], Ints]:
     """Decide a frame.
 
     coupled : whether the axes of the tracks' covariances may be correlated.
-    explain : whether margins are measured.
+    explain : whether margins are measured.   detected : (n,) P_D of each track, None for that of
+    the settings.
 
     Returns the tiers' decisions and the (n,) detection of each live track, -1 for none.
     Raises InputError for more candidates than the limit, CertificateError if a proof fails.
     """
     if len(rules) == 1 and rules[0].everything:
-        decision = _decide(0, rules[0], table, frame, variance, None, None, coupled, explain)
+        decision = _decide(
+            0, rules[0], table, frame, variance, None, None, coupled, explain, detected
+        )
         return (decision,), decision.solution.answer.row_column
     pairing = np.full(len(table), -1, np.int64)
     decisions = []
@@ -94,7 +98,9 @@ def associate(
     for k, rule in enumerate(rules):
         tracks = np.flatnonzero((pairing < 0) & ((rule.states >> table.state) & 1).astype(bool))
         detections = np.flatnonzero(free & scored_inside(frame.score, rule))
-        decision = _decide(k, rule, table, frame, variance, tracks, detections, coupled, explain)
+        decision = _decide(
+            k, rule, table, frame, variance, tracks, detections, coupled, explain, detected
+        )
         decisions.append(decision)
         column = decision.solution.answer.row_column
         pairing[tracks] = np.where(column >= 0, detections[column], -1) if len(detections) else -1
@@ -145,8 +151,11 @@ def _decide(
     detections: Ints | None,
     coupled: bool,
     explain: bool,
+    detected: Floats | None,
 ) -> TierDecision:
     mean, covariance, z = table.mean, table.covariance, frame.z
+    if tracks is not None and detected is not None:
+        detected = detected[tracks]
     if tracks is not None:
         mean, covariance = mean[tracks], covariance[tracks]
     if detections is not None:
@@ -175,12 +184,14 @@ def _decide(
             f"{table.identity[row if tracks is None else tracks[row]]} is not positive definite"
         )
     pairs = CandidatePairs(candidates, table, frame, tracks, detections)
-    terms, cost = candidate_costs(rule, pairs)
+    count = len(mean)
+    own = None if detected is None else np.repeat(detected, np.diff(candidates.start))
+    terms, cost = candidate_costs(rule, pairs, own)
     problem = Problem(
         candidates.start,
         candidates.column,
         cost,
-        np.full(len(mean), rule.miss),
+        miss_costs(rule, np.full(count, rule.detected) if detected is None else detected),
         np.zeros(len(z)),
     )
     solution = solve(problem, explain)

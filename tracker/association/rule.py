@@ -10,7 +10,7 @@ from scipy.special import gammaincinv
 
 from tracker.association.terms import TERMS, known_terms, registered_costs
 from tracker.errors import SettingsError
-from tracker.log.model import Kind
+from tracker.log.model import Floats, Kind
 from tracker.results.tracks import TrackState
 from tracker.settings.schema import CostSettings, Settings, TierSettings
 
@@ -24,8 +24,8 @@ BOX_NEW_DENSITY = 0.135
 class AssociationRule:
     """What one tier does, in numbers.
 
-    threshold : gate on d² (inf: none).   miss : a_i = −ln(1 − P_D P_G) in nats.
-    paid : −ln P_D, added to every candidate.   states : bit k set if `TrackState` k takes part.
+    threshold : gate on d² (inf: none).   detected : P_D, unless a track has its own.
+    inside : P_G, 1 without a d² gate.   states : bit k set if `TrackState` k takes part.
     """
 
     name: str
@@ -37,12 +37,17 @@ class AssociationRule:
     terms: tuple[str, ...]
     cost: CostSettings
     log_new_density: float
-    miss: float
-    paid: float
+    detected: float
+    inside: float
     score_from: float
     score_below: float
     states: int
     everything: bool  # all tracks and detections take part, no selection needed
+
+
+def miss_costs(rule: AssociationRule, detected: Floats) -> Floats:
+    """(n,) a_i = −ln(1 − P_D P_G) of tracks with detection probabilities `detected`, in nats."""
+    return -np.log1p(-detected * rule.inside)
 
 
 def gate_threshold(probability: float, dimension: int) -> float:
@@ -109,8 +114,6 @@ def _rule(settings: Settings, tier: TierSettings, kind: Kind, where: str) -> Ass
     low = -math.inf if tier.score_from is None else tier.score_from
     high = math.inf if tier.score_below is None else tier.score_below
     states = sum(1 << TrackState[word.upper()] for word in set(tier.states))
-    inside = 1.0 if gate.probability is None else gate.probability
-    detected = settings.sensor.detection_probability
     return AssociationRule(
         name=tier.name,
         boxes=boxes,
@@ -121,8 +124,8 @@ def _rule(settings: Settings, tier: TierSettings, kind: Kind, where: str) -> Ass
         terms=terms,
         cost=cost,
         log_new_density=math.log(density) if density else math.nan,
-        miss=-math.log1p(-detected * inside),
-        paid=-math.log(detected),
+        detected=settings.sensor.detection_probability,
+        inside=1.0 if gate.probability is None else gate.probability,
         score_from=low,
         score_below=high,
         states=states,

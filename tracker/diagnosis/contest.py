@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 
 from tracker.association import AssociationRule, CandidatePairs
 from tracker.association.cost import candidate_costs
-from tracker.association.rule import association_rules
+from tracker.association.rule import association_rules, miss_costs
 from tracker.association.terms import TERMS, registered_costs
 from tracker.diagnosis.explanation import Change
 from tracker.diagnosis.frame_record import FrameRecord
@@ -73,6 +73,7 @@ class Contest:
     row, column : (E,) of each candidate.   recorded : (E,) whether the ledger has it; the others
     were found again.   cost, terms, distance, overlap, force_cost : (E,); costs are nan where
     unknown, force costs where the ledger has none.   held : (n,) chosen column, -1 for none.
+    miss : (n,) miss costs.
     problem : None if costs are unknown.
     """
 
@@ -88,7 +89,12 @@ class Contest:
     overlap: Floats
     force_cost: Floats
     held: Ints
+    miss: Floats
     problem: Problem | None
+
+    def miss_of(self, track: int) -> float:
+        """What it costs to miss a track, in nats."""
+        return float(self.miss[np.searchsorted(self.tracks, track)])
 
     def candidates_of(self, *, track: int | None = None, detection: int | None = None) -> Ints:
         """Candidates of a track or of a detection, or of both."""
@@ -182,6 +188,7 @@ def read_contest(
     cost = rows.cost[pairs]
     row = np.searchsorted(tracks, rows.track[pairs])
     column = np.searchsorted(detections, rows.detection[pairs])
+    miss = _miss(record, rule, tracks)
     return Contest(
         rule=rule,
         tracks=tracks,
@@ -195,7 +202,8 @@ def read_contest(
         overlap=rows.overlap[pairs],
         force_cost=np.where(rows.chosen[pairs], 0.0, rows.force_cost[pairs]),
         held=held,
-        problem=_problem(rule, row, column, cost, len(tracks), len(detections)),
+        miss=miss,
+        problem=_problem(row, column, cost, miss, len(detections)),
     )
 
 
@@ -256,11 +264,16 @@ def _found_again(
             label=_codes(detections),
             line=record.line[detections],
         )
-        values, again = candidate_costs(rule, CandidatePairs(candidates, table, frame, None, None))
+        values, again = candidate_costs(
+            rule,
+            CandidatePairs(candidates, table, frame, None, None),
+            record.detected[at][row],
+        )
         if np.allclose(again[mine], rows.cost[chosen], rtol=SAME_COST, atol=SAME_COST):
             cost = again
             terms |= dict(zip(rule.terms, values, strict=True))
     known = not np.isnan(cost).any()
+    miss = _miss(record, rule, tracks)
     recorded = np.zeros(len(row), np.bool_)
     recorded[mine] = True
     cost[mine] = rows.cost[chosen]
@@ -279,7 +292,8 @@ def _found_again(
         overlap=candidates.overlap.copy(),
         force_cost=np.full(len(row), np.nan),
         held=held,
-        problem=_problem(rule, row, column, cost, len(tracks), len(detections)) if known else None,
+        miss=miss,
+        problem=_problem(row, column, cost, miss, len(detections)) if known else None,
     )
 
 
@@ -288,14 +302,17 @@ def _codes(like: Ints) -> Codes:
     return np.full(len(like), -1, np.int32)
 
 
-def _problem(
-    rule: AssociationRule, row: Ints, column: Ints, cost: Floats, tracks: int, detections: int
-) -> Problem:
-    counts = np.bincount(row, minlength=tracks)
+def _miss(record: FrameRecord, rule: AssociationRule, tracks: Ints) -> Floats:
+    """What it costs to miss each track."""
+    return miss_costs(rule, record.detected[np.searchsorted(record.track, tracks)])
+
+
+def _problem(row: Ints, column: Ints, cost: Floats, miss: Floats, detections: int) -> Problem:
+    counts = np.bincount(row, minlength=len(miss))
     return Problem(
         np.concatenate(([0], np.cumsum(counts))).astype(np.int64),
         np.ascontiguousarray(column),
         np.ascontiguousarray(cost),
-        np.full(tracks, rule.miss),
+        miss,
         np.zeros(detections),
     )

@@ -46,9 +46,9 @@ class DecisionRows:
 class FrameRecord:
     """Everything the ledger says about a frame.
 
-    track, state, unseen, estimate, covariance : (k,) (k,) (k,) (k, d) (k, d, d) live tracks as
-    predicted.   line, score, label, z, variance : the detections; -1 and nan for what is missing.
-    born : the track that each birth detection started.
+    track, state, unseen, detected (P_D), estimate, covariance : (k,) … (k, d) (k, d, d) live tracks
+    as predicted.   line, score, label, z, variance : the detections; -1 and nan for what is
+    missing.   born : the track that each birth detection started.
     """
 
     number: int
@@ -56,6 +56,7 @@ class FrameRecord:
     track: Ints
     state: list[str]
     unseen: Floats
+    detected: Floats
     estimate: Floats
     covariance: Floats
     line: Ints
@@ -125,6 +126,7 @@ def _read_frame(ledger: RunLedger, frame: int) -> FrameRecord:
         track=_whole(predictions, "track"),
         state=predictions["state"].to_pylist(),
         unseen=_real(predictions, "unseen_seconds"),
+        detected=_real(predictions, "detection_probability"),
         estimate=_stacked(predictions, names),
         covariance=square_matrices(predictions["covariance"], len(names)),
         line=_whole(detections, "line"),

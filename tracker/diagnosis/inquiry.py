@@ -218,7 +218,7 @@ class Inquiry:
             line=self.record.line_of(detection),
             chosen=chosen,
             runner_up=runner_up,
-            cost=0.0 if track is None else contest.rule.miss,
+            cost=0.0 if track is None else contest.miss_of(track),
             terms={},
             gate=None,
             force_cost=force_cost,

@@ -44,6 +44,13 @@ class SensorSettings(Section):
     detection_probability: Annotated[
         float, Probability, about("P_D: chance that a present object is detected in a frame")
     ] = 0.9
+    hidden_below: Annotated[
+        ProbabilityFloat | None,
+        about(
+            "Boxes: a track of whose box less than this share is visible, the rest being behind "
+            "a nearer one (lower in the image), is detected in proportion less; none: all alike"
+        ),
+    ] = None
     score_floor: Annotated[
         float | None, about("Detections scored below this are not used at all", "score")
     ] = None
