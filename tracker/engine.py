@@ -150,8 +150,11 @@ class Engine:
             None,
         )
 
-    def step(self, frame: Frame) -> FrameResult:
+    def step(self, frame: Frame, camera: CameraStep | None = None) -> FrameResult:
         """Take one frame in; frames must come in order of time.
+
+        camera : what the camera did since the frame before, where that is known from elsewhere
+        (`tracker.motion.video`); None estimates it if the settings say so.
 
         Raises UsageError for a frame that is not later than the one before, InputError for a
         frame with too many candidates, CertificateError if an assignment is not proved optimal.
@@ -168,8 +171,9 @@ class Engine:
 
         self.motion.predict(table.mean, table.covariance, elapsed)
         variance = self.motion.measurement_variance(frame.z, frame.sigma)
-        camera = None
-        if self.camera is not None:
+        if camera is not None:
+            camera.apply(table, self.motion.coupled)
+        elif self.camera is not None:
             camera = self.camera.follow(table, frame, variance, self.motion.coupled)
         if self._exits is not None:
             left = self._exits.left(table)

@@ -17,6 +17,7 @@ import numpy as np
 
 from tracker.kernels.camera import CameraPrior
 from tracker.kernels.follow import LEAST_OBJECTS, STILL, follow_camera
+from tracker.kernels.warp import warp_states
 from tracker.lifecycle.table import TrackTable
 from tracker.log.model import Floats, Frame
 from tracker.settings.schema import CameraSettings
@@ -30,13 +31,18 @@ class CameraStep:
     """What the camera did before a frame.
 
     parameters : (4,) shift x and y, zoom (0: none) and rotation (radians) about `centre` (2,).
-    evidence : nats for 'it moved' against 'it did not'.   support : number of objects that agree.
+    evidence : nats for 'it moved' against 'it did not', nan where it was measured in a video.
+    support : number of objects (in a video: corners) that agree.
     """
 
     parameters: Floats
     centre: Floats
     evidence: float
     support: float
+
+    def apply(self, table: TrackTable, coupled: bool) -> None:
+        """Move predicted states of boxes with the image, in place."""
+        warp_states(table.mean, table.covariance, self.parameters, self.centre, coupled)
 
     @property
     def values(self) -> tuple[float, ...]:

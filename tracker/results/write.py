@@ -184,7 +184,7 @@ def write_camera(path: Path, steps: list[tuple[float, ...]]) -> None:
         rows = csv.writer(file, lineterminator="\n")
         rows.writerow(CAMERA_COLUMNS)
         for number, *values in steps:
-            rows.writerow((number, *(f"{value:.7g}" for value in values)))
+            rows.writerow((number, *("" if value != value else f"{value:.7g}" for value in values)))
 
 
 def write_rejections(path: Path, rejections: tuple[Rejection, ...]) -> None:
