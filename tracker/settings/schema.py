@@ -102,7 +102,7 @@ class CameraSettings(Section):
         float,
         Positive,
         about("Farthest that an object is looked for beside its prediction", "box scales"),
-    ] = 1.0
+    ] = 2.0
     shift_sigma: Annotated[
         float, Positive, about("Standard deviation of a jolt's shift", "box scales per frame")
     ] = 0.3
