@@ -8,22 +8,18 @@ from __future__ import annotations
 
 from typing import Annotated, Literal
 
-from msgspec import Meta, Struct
+from msgspec import Meta
 
-Positive = Meta(gt=0.0)
-NonNegative = Meta(ge=0.0)
-Probability = Meta(gt=0.0, lt=1.0)
-PositiveFloat = Annotated[float, Positive]
-ProbabilityFloat = Annotated[float, Probability]
-
-
-def about(meaning: str, unit: str = "", source: str = "") -> Meta:
-    """What `--print-settings` says about one setting."""
-    return Meta(description=meaning, extra={"unit": unit, "source": source})
-
-
-class _Section(Struct, frozen=True, forbid_unknown_fields=True, kw_only=True):
-    """Base of all sections: immutable, no unknown names."""
+from tracker.settings.hindsight import HindsightSettings
+from tracker.settings.section import (
+    NonNegative,
+    Positive,
+    PositiveFloat,
+    Probability,
+    ProbabilityFloat,
+    about,
+)
+from tracker.settings.section import Section as _Section
 
 
 class TimeSettings(_Section):
@@ -351,3 +347,4 @@ class Settings(_Section):
     lifecycle: LifecycleSettings = LifecycleSettings()
     output: OutputSettings = OutputSettings()
     ledger: LedgerSettings = LedgerSettings()
+    hindsight: HindsightSettings = HindsightSettings()

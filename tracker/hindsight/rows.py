@@ -1,0 +1,99 @@
+"""Rows of tracks, smoothed, those between detections included."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from tracker.hindsight.pieces import Pieces, Scans
+from tracker.hindsight.smoothing import (
+    Grid,
+    Smoothable,
+    filter_forward,
+    smooth_backward,
+    spread_out,
+)
+from tracker.hindsight.stabilise import CommonFrame
+from tracker.log.model import DetectionLog, Floats, Ints, Kind
+from tracker.results.recorder import TrackRows
+from tracker.results.tracks import TrackState
+from tracker.settings import Settings
+
+
+def smoothed_rows(
+    log: DetectionLog,
+    pieces: Pieces,
+    scans: Scans,
+    common: CommonFrame,
+    model: Smoothable,
+    settings: Settings,
+    z: Floats,
+    variance: Floats,
+) -> TrackRows:
+    """The rows of some pieces, by (scan, piece).
+
+    z, variance : (N, d) of the log in the common frame. A row between detections is 'coasting'
+    and reported if its gap is short and its smoothed position well known.
+    """
+    d = model.dimension
+    grid = spread_out(pieces)
+    states = filter_forward(model, grid, scans, z, variance)
+    smooth_backward(model, grid, scans, states)
+    estimate, rate, covariance = common.back(
+        states.mean[:, :d], states.mean[:, d : 2 * d], states.covariance[:, :d, :d], grid.scan
+    )
+    seen = grid.detection >= 0
+    known, following, gap = _around(grid, scans)
+    reported = seen | (
+        (gap <= settings.hindsight.fill_seconds)
+        & _well_known(model, estimate, covariance, settings.hindsight.fill_spread)
+    )
+    if log.kind is Kind.BOX:
+        reported &= (estimate[:, 2:4] > 0.0).all(axis=1) | seen
+    shown = estimate.copy()
+    position = settings.output.position
+    if position == "detected" or (position == "auto" and log.kind is Kind.BOX):
+        shown[seen] = log.z[grid.detection[seen]]
+    source = grid.detection[known]  # the row's own detection or the last before it
+    line = np.full(len(grid), -1, np.int64)
+    line[seen] = log.line[grid.detection[seen]]
+    upper, other = np.triu_indices(d)
+    by_row = np.zeros(len(log.z) if len(pieces.row) else 0)
+    by_row[pieces.row] = pieces.log_confidence
+    return TrackRows(
+        frame=scans.number[grid.scan],
+        time=scans.time[grid.scan],
+        track=pieces.identity[grid.piece],
+        z=shown,
+        estimate=estimate,
+        rate=rate,
+        covariance=covariance[:, upper, other],
+        score=log.score[source],
+        label=log.label[source],
+        confidence=np.exp(by_row[source]),
+        state=np.where(seen, TrackState.CONFIRMED, TrackState.COASTING).astype(np.int8),
+        reported=reported,
+        line=line,
+    )
+
+
+def _around(grid: Grid, scans: Scans) -> tuple[Ints, Ints, Floats]:
+    """For each row the row of the last and of the next detection (its own if it has one), and the
+    seconds between these."""
+    order = np.lexsort((grid.scan, grid.piece))
+    seen = grid.detection[order] >= 0
+    place = np.arange(len(order))
+    before = np.maximum.accumulate(np.where(seen, place, 0))
+    after = np.minimum.accumulate(np.where(seen, place, len(order) - 1)[::-1])[::-1]
+    last, following = np.empty(len(order), np.int64), np.empty(len(order), np.int64)
+    last[order], following[order] = order[before], order[after]
+    return last, following, scans.time[grid.scan[following]] - scans.time[grid.scan[last]]
+
+
+def _well_known(
+    model: Smoothable, estimate: Floats, covariance: Floats, most: float
+) -> NDArray[np.bool_]:
+    """Whether positions are known to within so many standard deviations of a detection there."""
+    variance = model.measurement_variance(estimate, None)
+    spread = np.diagonal(covariance, axis1=1, axis2=2)
+    return (spread[:, :2] <= most**2 * variance[:, :2]).all(axis=1)
