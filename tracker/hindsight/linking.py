@@ -26,6 +26,7 @@ from scipy.special import ndtr
 
 from tracker.association.rule import gate_threshold
 from tracker.errors import CertificateError, KernelError
+from tracker.hindsight.beginnings import in_view, log_density_of_beginnings
 from tracker.hindsight.ends import Ends, both_ends
 from tracker.hindsight.pieces import Pieces, Scans
 from tracker.hindsight.smoothing import Smoothable
@@ -41,7 +42,6 @@ from tracker.settings import Settings
 
 PROOF_TOLERANCE = 1e-9
 WORTH_KEEPING = 7.0  # nats above the price of no link: more improbable candidates are not listed
-LEAST_SIZES = 5  # beginnings that are needed to say which sizes new tracks have
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -133,7 +133,7 @@ def _prices_of_ends(
     place, _, spread = common.back(
         mean[:, :d], mean[:, :d], covariance[:, :d, :d], pieces.last
     )
-    low, high = _view(log)
+    low, high = in_view(log)
     sigma = np.sqrt(np.diagonal(spread, axis1=1, axis2=2)[:, :2])
     inside = np.prod(
         ndtr((high - place[:, :2]) / sigma) - ndtr((low - place[:, :2]) / sigma), axis=1
@@ -141,34 +141,6 @@ def _prices_of_ends(
     there = how.interruption_probability * np.clip(inside, 1e-9, 1.0)
     left = scans.time[-1] - scans.time[pieces.last]
     return -np.log1p(-there * -np.expm1(-left / how.hidden_seconds)), -np.log(there)
-
-
-def _view(log: DetectionLog) -> tuple[Floats, Floats]:
-    """Corners of what the sensor sees: the image if its size is known, else where detections are."""
-    width, height = log.facts.image_width, log.facts.image_height
-    if log.kind == "box" and width is not None and height is not None:
-        return np.zeros(2), np.array([width, height])
-    return log.z[:, :2].min(axis=0), log.z[:, :2].max(axis=0)
-
-
-def _beginnings(pieces: Pieces, log: DetectionLog, scans: Scans, variance: Floats) -> Floats:
-    """(P,) ln(λ times the density of new tracks at each beginning) in measurement space."""
-    low, high = _view(log)
-    first = pieces.row[pieces.start[:-1]]
-    sigma = np.sqrt(variance[:, :2])
-    density = -np.log(np.maximum(high - low, sigma)).sum(axis=1)
-    if log.kind == "box":
-        size = np.log(log.z[first][:, 2:4])
-        spread = np.eye(2)
-        middle = size.mean(axis=0)
-        if len(size) >= LEAST_SIZES:
-            spread = np.cov(size.T) + 1e-4 * np.eye(2)
-        off = size - middle
-        squares = np.einsum("ni,ij,nj->n", off, np.linalg.inv(spread), off)
-        density -= 0.5 * squares + 0.5 * np.linalg.slogdet(2.0 * np.pi * spread)[1]
-        density -= size.sum(axis=1)
-    count = max(1, int(np.sum(pieces.first > 0)))
-    return density + math.log(count / (scans.time[-1] - scans.time[0]))
 
 
 def _candidates(
@@ -184,7 +156,7 @@ def _candidates(
     """Ends and beginnings that may belong together, found lag by lag: never all pairs."""
     how = settings.hindsight
     threshold = gate_threshold(how.gate_probability, model.dimension)
-    new = _beginnings(pieces, log, scans, _start_variance(ends))
+    new = log_density_of_beginnings(pieces, log, scans)
     alike = _Likeness(pieces, log, settings)
     parts: list[tuple[Ints, Ints, Floats, Floats, Floats]] = []
     last, first = pieces.last, pieces.first

@@ -42,8 +42,10 @@ class HindsightSettings(Section):
         float, Positive, about("Mean time that such an object stays unseen", "s")
     ] = 1.0
     link_margin: Annotated[
-        float, NonNegative, about("A link with a smaller margin is not made", "nats")
-    ] = 1.0
+        float,
+        NonNegative,
+        about("A link with a smaller margin is not made; 2.3 nats is odds of 10 to 1", "nats"),
+    ] = 2.3
     fill_seconds: Annotated[
         float, NonNegative, about("Longest gap whose rows are reported; 0 reports none", "s")
     ] = 4.0
