@@ -20,7 +20,7 @@ ROWS_AT_ONCE = 1000  # bounds memory
 
 
 def in_view(log: DetectionLog) -> tuple[Floats, Floats]:
-    """Corners of what the sensor sees: the image if its size is known, else where detections are."""
+    """Corners of what the sensor sees: the image where its size is known, else all detections."""
     width, height = log.facts.image_width, log.facts.image_height
     if log.kind is Kind.BOX and width is not None and height is not None:
         return np.zeros(2), np.array([width, height])

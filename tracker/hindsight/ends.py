@@ -37,9 +37,7 @@ class Ends:
     alone: Floats
 
 
-def both_ends(
-    model: Smoothable, pieces: Pieces, scans: Scans, z: Floats, variance: Floats
-) -> Ends:
+def both_ends(model: Smoothable, pieces: Pieces, scans: Scans, z: Floats, variance: Floats) -> Ends:
     """Filter and smooth every piece, and keep its ends."""
     count, s = len(pieces), model.states
     mean, covariance = np.empty((count, s)), np.empty((count, s, s))

@@ -130,9 +130,7 @@ def _prices_of_ends(
     mean, covariance = ends.mean.copy(), ends.covariance.copy()
     model.predict(mean, covariance, how.hidden_seconds)
     d = model.dimension
-    place, _, spread = common.back(
-        mean[:, :d], mean[:, :d], covariance[:, :d, :d], pieces.last
-    )
+    place, _, spread = common.back(mean[:, :d], mean[:, :d], covariance[:, :d, :d], pieces.last)
     low, high = in_view(log)
     sigma = np.sqrt(np.diagonal(spread, axis1=1, axis2=2)[:, :2])
     inside = np.prod(
@@ -275,7 +273,9 @@ def _commonest_labels(pieces: Pieces, log: DetectionLog) -> Ints:
     seen = np.flatnonzero(label >= 0)
     if len(seen):
         kinds = int(label.max()) + 1
-        keys, counts = np.unique(pieces.of_detection[seen] * kinds + label[seen], return_counts=True)
+        keys, counts = np.unique(
+            pieces.of_detection[seen] * kinds + label[seen], return_counts=True
+        )
         order = np.lexsort((-keys, counts))  # the commonest last, of equals the lower code
         found[keys[order] // kinds] = keys[order] % kinds
     return found

@@ -16,7 +16,7 @@ from tracker.hindsight.pieces import Collector, Pieces, Scans
 from tracker.hindsight.rows import smoothed_rows
 from tracker.hindsight.smoothing import Smoothable, batches, smoothable
 from tracker.hindsight.stabilise import CommonFrame, measure_common_motion
-from tracker.log.model import DetectionLog, Floats
+from tracker.log.model import DetectionLog, Floats, Ints
 from tracker.motion import motion_model
 from tracker.results.recorder import TrackRows, no_rows
 from tracker.settings import Settings
@@ -59,9 +59,7 @@ def check_hindsight(settings: Settings, log: DetectionLog) -> None:
     smoothable(motion_model(settings, log.kind))
 
 
-def look_back(
-    log: DetectionLog, collected: Collector, settings: Settings, born: int
-) -> Hindsight:
+def look_back(log: DetectionLog, collected: Collector, settings: Settings, born: int) -> Hindsight:
     """Decide the identities anew.
 
     log : what the engine saw.   collected : what it decided.   born : its highest id.
@@ -98,24 +96,37 @@ def in_common_frame(
     return z, variance
 
 
-def rows_in_hindsight(log: DetectionLog, found: Hindsight, settings: Settings) -> TrackRows:
-    """Every object in every scan from its first to its last detection, sorted by (frame, track)."""
+def rows_in_hindsight(
+    log: DetectionLog, found: Hindsight, settings: Settings
+) -> tuple[TrackRows, Ints]:
+    """Every object in every scan from its first to its last detection, sorted by (frame, track).
+
+    Also returns the engine's track of each row, -1 for a row without a detection.
+    """
     if not len(found.chains):
-        return no_rows(log.kind)
+        return no_rows(log.kind), np.empty(0, np.int64)
     z, variance = in_common_frame(log, found.chains, found.common, found.model)
     parts = list(_parts(log, found, settings, z, variance))
-    rows = TrackRows.join(parts)
+    rows = TrackRows.join([part for part, _ in parts])
+    online = np.concatenate([own for _, own in parts])
     order = np.lexsort((rows.track, rows.frame))
-    return TrackRows(*(getattr(rows, name)[order] for name in TrackRows.__slots__))
+    ordered = TrackRows(*(getattr(rows, name)[order] for name in TrackRows.__slots__))
+    return ordered, online[order]
 
 
 def _parts(
     log: DetectionLog, found: Hindsight, settings: Settings, z: Floats, variance: Floats
-) -> Iterator[TrackRows]:
+) -> Iterator[tuple[TrackRows, Ints]]:
     for numbers in batches(found.chains):
         wanted = np.zeros(len(found.chains), np.bool_)
         wanted[numbers] = True
         yield smoothed_rows(
-            log, found.chains.only(wanted), found.scans, found.common, found.model, settings, z,
+            log,
+            found.chains.only(wanted),
+            found.scans,
+            found.common,
+            found.model,
+            settings,
+            z,
             variance,
         )

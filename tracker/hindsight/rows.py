@@ -29,8 +29,8 @@ def smoothed_rows(
     settings: Settings,
     z: Floats,
     variance: Floats,
-) -> TrackRows:
-    """The rows of some pieces, by (scan, piece).
+) -> tuple[TrackRows, Ints]:
+    """The rows of some pieces, by (scan, piece), and the engine's track of each, -1 for none.
 
     z, variance : (N, d) of the log in the common frame. A row between detections is 'coasting'
     and reported if its gap is short and its smoothed position well known.
@@ -43,7 +43,7 @@ def smoothed_rows(
         states.mean[:, :d], states.mean[:, d : 2 * d], states.covariance[:, :d, :d], grid.scan
     )
     seen = grid.detection >= 0
-    known, following, gap = _around(grid, scans)
+    known, gap = _around(grid, scans)
     reported = seen | (
         (gap <= settings.hindsight.fill_seconds)
         & _well_known(model, estimate, covariance, settings.hindsight.fill_spread)
@@ -58,9 +58,9 @@ def smoothed_rows(
     line = np.full(len(grid), -1, np.int64)
     line[seen] = log.line[grid.detection[seen]]
     upper, other = np.triu_indices(d)
-    by_row = np.zeros(len(log.z) if len(pieces.row) else 0)
-    by_row[pieces.row] = pieces.log_confidence
-    return TrackRows(
+    own = _detection_of_row(grid, pieces)
+    online = np.where(seen, pieces.online[own], -1)
+    rows = TrackRows(
         frame=scans.number[grid.scan],
         time=scans.time[grid.scan],
         track=pieces.identity[grid.piece],
@@ -70,24 +70,34 @@ def smoothed_rows(
         covariance=covariance[:, upper, other],
         score=log.score[source],
         label=log.label[source],
-        confidence=np.exp(by_row[source]),
+        confidence=np.exp(pieces.log_confidence[own]),
         state=np.where(seen, TrackState.CONFIRMED, TrackState.COASTING).astype(np.int8),
         reported=reported,
         line=line,
     )
+    return rows, online
 
 
-def _around(grid: Grid, scans: Scans) -> tuple[Ints, Ints, Floats]:
-    """For each row the row of the last and of the next detection (its own if it has one), and the
-    seconds between these."""
+def _detection_of_row(grid: Grid, pieces: Pieces) -> Ints:
+    """(R,) number, among the pieces' detections, of each row's own or else the last before."""
+    order = np.lexsort((grid.scan, grid.piece))  # the order of the pieces' detections
+    number = np.empty(len(grid), np.int64)
+    number[order] = np.cumsum(grid.detection[order] >= 0) - 1
+    return number
+
+
+def _around(grid: Grid, scans: Scans) -> tuple[Ints, Floats]:
+    """For each row the row of its own detection or else the last before it, and the seconds from
+    there to the next detection (0 where it has its own)."""
     order = np.lexsort((grid.scan, grid.piece))
     seen = grid.detection[order] >= 0
     place = np.arange(len(order))
     before = np.maximum.accumulate(np.where(seen, place, 0))
     after = np.minimum.accumulate(np.where(seen, place, len(order) - 1)[::-1])[::-1]
-    last, following = np.empty(len(order), np.int64), np.empty(len(order), np.int64)
-    last[order], following[order] = order[before], order[after]
-    return last, following, scans.time[grid.scan[following]] - scans.time[grid.scan[last]]
+    time = scans.time[grid.scan[order]]
+    last, gap = np.empty(len(order), np.int64), np.empty(len(order))
+    last[order], gap[order] = order[before], time[after] - time[before]
+    return last, gap
 
 
 def _well_known(
@@ -96,4 +106,5 @@ def _well_known(
     """Whether positions are known to within so many standard deviations of a detection there."""
     variance = model.measurement_variance(estimate, None)
     spread = np.diagonal(covariance, axis1=1, axis2=2)
-    return (spread[:, :2] <= most**2 * variance[:, :2]).all(axis=1)
+    known: NDArray[np.bool_] = (spread[:, :2] <= most**2 * variance[:, :2]).all(axis=1)
+    return known

@@ -82,9 +82,7 @@ def measure_common_motion(pieces: Pieces, scans: int, z: Floats) -> CommonFrame:
     constant velocity does not mind.
     """
     shift = np.zeros((scans, 2))
-    together = np.flatnonzero(
-        (np.diff(pieces.of_detection) == 0) & (np.diff(pieces.scan) == 1)
-    )
+    together = np.flatnonzero((np.diff(pieces.of_detection) == 0) & (np.diff(pieces.scan) == 1))
     arrival = pieces.scan[together + 1]
     order = np.argsort(arrival, kind="stable")
     moved = (z[pieces.row[together + 1], :2] - z[pieces.row[together], :2])[order]
