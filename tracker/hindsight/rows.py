@@ -106,5 +106,5 @@ def _well_known(
     """Whether positions are known to within so many standard deviations of a detection there."""
     variance = model.measurement_variance(estimate, None)
     spread = np.diagonal(covariance, axis1=1, axis2=2)
-    known: NDArray[np.bool_] = (spread[:, :2] <= most**2 * variance[:, :2]).all(axis=1)
-    return known
+    near = spread[:, :2] <= most**2 * variance[:, :2]
+    return near[:, 0] & near[:, 1]
