@@ -11,7 +11,7 @@ import numpy as np
 from tracker.hindsight.chains import join
 from tracker.hindsight.cutting import cut_at_gaps
 from tracker.hindsight.linking import Links, link_pieces
-from tracker.hindsight.noise import measured_noise
+from tracker.hindsight.noise import likeliest_noise, position_likelihood
 from tracker.hindsight.pieces import Collector, Pieces, Scans
 from tracker.hindsight.rows import smoothed_rows
 from tracker.hindsight.smoothing import Smoothable, batches, smoothable
@@ -49,6 +49,7 @@ class Hindsight:
             "links_made": 0 if links is None else int(links.made.sum()),
             "links_too_doubtful": 0 if links is None else int((links.chosen & ~links.made).sum()),
             "largest_gap": 0.0 if links is None else abs(links.solution.gap),
+            "sensor_moved": bool(np.any(self.common.maps != self.common.maps[:1])),
             "acceleration_noise": self.settings.motion.acceleration_noise,
             "size_noise": self.settings.motion.size_noise,
         }
@@ -69,20 +70,42 @@ def look_back(log: DetectionLog, collected: Collector, settings: Settings, born:
     """
     how = settings.hindsight
     scans, tracks = collected.finish()
-    common = CommonFrame.still(len(scans.time))
-    if how.common_motion == "measured":
-        common = measure_common_motion(tracks, len(scans.time), log.z)
+    common, settings = _common_frame(log, tracks, scans, settings)
     model = smoothable(motion_model(settings, log.kind))
     z, variance = in_common_frame(log, tracks, common, model)
-    if how.noise == "measured" and len(tracks):
-        settings = measured_noise(settings, log.kind, tracks, scans, z, variance)
-        model = smoothable(motion_model(settings, log.kind))
     if not len(tracks) or how.link_seconds == 0.0 or len(scans.time) < 2:
         return Hindsight(scans, tracks, tracks, None, common, settings, model)
     pieces = cut_at_gaps(tracks, scans, how.cut_seconds)
     links = link_pieces(pieces, log, scans, common, model, settings, z, variance)
     chains = join(pieces, links, born)
     return Hindsight(scans, pieces, chains, links, common, settings, model)
+
+
+def _common_frame(
+    log: DetectionLog, tracks: Pieces, scans: Scans, settings: Settings
+) -> tuple[CommonFrame, Settings]:
+    """The frame that predicts the log's own tracks better, and settings with the noise there.
+
+    A sensor that stands still is believed to, if its measured motion does not predict better.
+    """
+    how = settings.hindsight
+    still = CommonFrame.still(len(scans.time))
+    choices = [still]
+    if how.common_motion == "measured" and len(tracks):
+        choices.append(measure_common_motion(tracks, len(scans.time), log.z))
+    found: list[tuple[CommonFrame, Settings]] = []
+    likelihoods = []
+    for common in choices if len(tracks) else []:
+        model = smoothable(motion_model(settings, log.kind))
+        judged = (settings, log.kind, tracks, scans, *in_common_frame(log, tracks, common, model))
+        if how.noise == "measured":
+            own, likelihood = likeliest_noise(*judged)
+        else:
+            own = settings
+            likelihood = position_likelihood(*judged) if len(choices) > 1 else 0.0
+        found.append((common, own))
+        likelihoods.append(likelihood)
+    return found[int(np.argmax(likelihoods))] if found else (still, settings)
 
 
 def in_common_frame(

@@ -1,4 +1,4 @@
-"""Process noise measured on the log's own tracks, by how well they predict themselves.
+"""What predicts the log's own tracks best: how noisy motion is, and whether the sensor moved.
 
 The engine's noise must forgive whatever a frame may bring (a jerk of the camera, a poor box). To
 bridge seconds the question is another: how far from its course is an object after half a second,
@@ -13,7 +13,7 @@ import numpy as np
 from msgspec.structs import replace
 
 from tracker.hindsight.pieces import Pieces, Scans
-from tracker.hindsight.smoothing import Smoothable, filter_forward, spread_out
+from tracker.hindsight.smoothing import Smoothable, filter_forward, smoothable, spread_out
 from tracker.log.model import Floats, Ints, Kind
 from tracker.motion import motion_model
 from tracker.settings import Settings
@@ -21,33 +21,50 @@ from tracker.settings import Settings
 HORIZONS = (0.5, 1.0, 2.0)  # seconds ahead
 FACTORS = 2.0 ** np.arange(-6.0, 3.0)  # of the settings' noise
 SETTLED = 5  # scans after which a filter has forgotten how it began
-# With fewer predictions than this the settings' noise stays.
+# With fewer predictions than this nothing is concluded.
 LEAST_PREDICTIONS = 200
-MOST_PREDICTIONS = 20_000  # of each horizon are judged: evenly spread, enough for a noise level
+MOST_PREDICTIONS = 20_000  # of each horizon are judged
+MOST_ROWS = 100_000  # are filtered: whole pieces, evenly spread, enough for a noise level
+UNKNOWN = -np.inf
 
 
-def measured_noise(
+def likeliest_noise(
     settings: Settings, kind: Kind, pieces: Pieces, scans: Scans, z: Floats, variance: Floats
-) -> Settings:
+) -> tuple[Settings, float]:
     """Settings whose [motion] noise is the likeliest of some multiples, position and size apart.
 
     z, variance : (N, d) of the log in the common frame. The likelihood is that of positions (or
     sizes) at each horizon given all detections before, as independent normals.
+
+    Returns also the log-likelihood of positions, a mean over predictions; -inf, and the settings
+    as they were, where too few tell.
     """
+    best = UNKNOWN
     names = {"acceleration_noise": [0, 1]}
     if kind is Kind.BOX:
         names["size_noise"] = [2, 3]
     for name, axes in names.items():
         base = getattr(settings.motion, name)
+        judge = _Judge(pieces, scans, z, variance, axes)
         choices = [
             replace(settings, motion=replace(settings.motion, **{name: base * factor}))
-            for factor in FACTORS.tolist()
+            for factor in (FACTORS.tolist() if base > 0.0 else [1.0])
         ]
-        judged = _Judge(pieces, scans, z, variance, axes)
-        scores = [judged(motion_model(choice, kind)) for choice in choices]
-        if base > 0.0 and np.isfinite(scores).all():
-            settings = choices[int(np.argmax(scores))]
-    return settings
+        scores = [judge(smoothable(motion_model(choice, kind))) for choice in choices]
+        likeliest = int(np.argmax(scores))
+        if scores[likeliest] > UNKNOWN:
+            settings = choices[likeliest]
+        if axes[0] == 0:
+            best = scores[likeliest]
+    return settings, best
+
+
+def position_likelihood(
+    settings: Settings, kind: Kind, pieces: Pieces, scans: Scans, z: Floats, variance: Floats
+) -> float:
+    """The same likelihood of positions under the settings' own noise."""
+    judge = _Judge(pieces, scans, z, variance, [0, 1])
+    return judge(smoothable(motion_model(settings, kind)))
 
 
 class _Judge:
@@ -56,21 +73,21 @@ class _Judge:
     def __init__(
         self, pieces: Pieces, scans: Scans, z: Floats, variance: Floats, axes: list[int]
     ) -> None:
+        rows = int(np.sum(pieces.last - pieces.first + 1))
+        pieces = pieces.only(np.arange(len(pieces)) % (1 + rows // MOST_ROWS) == 0)
         self._grid = spread_out(pieces)
         self._scans, self._z, self._variance, self._axes = scans, z, variance, axes
         age = self._grid.scan - pieces.first[self._grid.piece]
         self._settled = np.flatnonzero(age >= SETTLED)
         self._later = _finder(pieces, len(scans.time))
-        self._pieces = pieces
 
     def __call__(self, model: Smoothable) -> float:
-        grid, axes = self._grid, self._axes
+        grid, axes, time = self._grid, self._axes, self._scans.time
         states = filter_forward(model, grid, self._scans, self._z, self._variance)
-        step = float(np.median(np.diff(self._scans.time))) if len(self._scans.time) > 1 else 1.0
+        step = float(np.median(np.diff(time))) if len(time) > 1 else 1.0
         total, count = 0.0, 0
-        for seconds in HORIZONS:
-            lag = max(1, round(seconds / step))
-            row = self._settled[grid.scan[self._settled] + lag < len(self._scans.time)]
+        for lag in sorted({max(1, round(seconds / step)) for seconds in HORIZONS}):
+            row = self._settled[grid.scan[self._settled] + lag < len(time)]
             target = self._later(grid.piece[row], grid.scan[row] + lag)
             row, target = row[target >= 0], target[target >= 0]
             if not len(row):
@@ -83,7 +100,7 @@ class _Judge:
             error = self._z[target][:, axes] - mean[:, axes]
             total += float(np.mean(np.sum(error**2 / spread + np.log(spread), axis=1)))
             count += len(row)
-        return -0.5 * total if count >= LEAST_PREDICTIONS else -np.inf
+        return -0.5 * total if count >= LEAST_PREDICTIONS else UNKNOWN
 
 
 def _finder(pieces: Pieces, scans: int) -> Callable[[Ints, Ints], Ints]:

@@ -16,6 +16,8 @@ from tracker.log.model import Floats, Ints
 
 # So many pieces must be seen in both of two scans before what they have in common says anything.
 LEAST_WITNESSES = 3
+# Displacements within so many median absolute deviations agree: 2.5 standard deviations.
+AGREEING = 2.5 * 1.4826
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -75,11 +77,11 @@ class CommonFrame:
 
 
 def measure_common_motion(pieces: Pieces, scans: int, z: Floats) -> CommonFrame:
-    """The common frame in which the median piece stands still from each scan to the next.
+    """The common frame in which most pieces stand still from each scan to the next.
 
-    z : (N, d) of the log. The median (of each axis) is not moved by less than half of the
-    objects; where they all walk one way the common frame walks with them, which a model of
-    constant velocity does not mind.
+    z : (N, d) of the log. Consensus about the median, which less than half of the objects cannot
+    move, then refined; where all walk one way the common frame walks with them, which a model
+    of constant velocity does not mind.
     """
     shift = np.zeros((scans, 2))
     together = np.flatnonzero((np.diff(pieces.of_detection) == 0) & (np.diff(pieces.scan) == 1))
@@ -89,5 +91,18 @@ def measure_common_motion(pieces: Pieces, scans: int, z: Floats) -> CommonFrame:
     bound = np.searchsorted(arrival[order], np.arange(scans + 1))
     for k in range(scans):
         if bound[k + 1] - bound[k] >= LEAST_WITNESSES:
-            shift[k] = np.median(moved[bound[k] : bound[k + 1]], axis=0)
+            shift[k] = _agreed(moved[bound[k] : bound[k + 1]])
     return CommonFrame.shifts(-np.cumsum(shift, axis=0))
+
+
+def _agreed(moved: Floats) -> Floats:
+    """(2,) mean of the (k, 2) displacements that agree with their median.
+
+    The mean of the same objects' displacements adds up over scans without adding up their noise,
+    which a median's does not.
+    """
+    middle = np.median(moved, axis=0)
+    off = np.abs(moved - middle)
+    limit = AGREEING * np.median(off, axis=0)
+    agree = (off <= limit).all(axis=1)
+    return np.mean(moved[agree], axis=0) if agree.any() else middle
