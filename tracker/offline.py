@@ -114,7 +114,7 @@ def track_log(
     """
     settings = settings or Settings()
     used = used_detections(log, settings)
-    engine = Engine(settings, log.kind, explain=False)
+    engine = Engine(settings, log.kind, explain=offline)
     if offline:
         check_hindsight(settings, log)
         collector = Collector()

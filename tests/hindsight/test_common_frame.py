@@ -92,7 +92,7 @@ def staggered():
 def test_links_survive_a_moving_sensor():
     frame, z = staggered()
     log = log_of(frame, z + sway(frame))
-    # All 18 but for those that the sensor's motion, known to some tenths of a metre, makes doubtful.
+    # All but those that the motion, known to some tenths of a metre, leaves doubtful.
     assert links_made(log, "hindsight.common_motion=measured") >= 15
     assert links_made(log) < 9
 

@@ -65,14 +65,18 @@ def test_links_explain_the_identities(folder):
         joined = row["object_before"] == row["object_after"]
         if row["decision"] == "linked":
             assert joined
+            assert row["earlier"] != row["later"]
             assert float(row["margin"]) >= Settings().hindsight.link_margin
+        elif row["decision"] == "joined again":
+            assert joined
+            assert row["earlier"] == row["later"]
         elif row["decision"] == "too doubtful":
             assert float(row["margin"]) < Settings().hindsight.link_margin
         else:
             assert row["margin"] == ""
             assert float(row["force_cost"]) >= 0.0
         assert int(row["last_frame"]) < int(row["first_frame"])
-    assert facts["objects"] == facts["pieces"] - facts["links_made"]
+    assert facts["objects"] == facts["pieces"] - facts["links_made"] - facts["joined_again"]
     rows = read_run(folder / "offline")
     assert len(np.unique(rows.track)) == facts["objects"]
     assert len(rows) == facts["track_rows"]

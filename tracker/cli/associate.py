@@ -151,7 +151,7 @@ def _report(facts: dict, folder: Path) -> None:
         looked = facts["hindsight"]
         print(
             f"{facts['name']}: in hindsight {looked['objects']} objects, by {looked['links_made']} "
-            f"links between {looked['pieces']} pieces, listed with margins in "
-            f"{folder / 'links.csv'}; the engine's own tracks are in tracks_online",
+            f"links between tracks, listed with margins in {folder / 'links.csv'}; the engine's "
+            "own tracks are in tracks_online",
             file=sys.stderr,
         )

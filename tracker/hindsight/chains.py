@@ -26,7 +26,9 @@ def join(pieces: Pieces, links: Links, born: int) -> Pieces:
     before[links.following[linked]] = linked
     won = np.zeros(len(pieces))
     made = links.made
-    won[links.candidates.later[made]] = -np.log1p(np.exp(-links.margin[made]))
+    # A link that is not in the optimum has the odds of its force cost against it.
+    nats = np.where(links.chosen, links.margin, -links.force)[made]
+    won[links.candidates.later[made]] = -np.logaddexp(0.0, -nats)
 
     own = _within(pieces)
     at_end = own[pieces.start[1:] - 1] if len(pieces) else own

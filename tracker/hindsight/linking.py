@@ -59,8 +59,9 @@ class Candidates:
 class Links:
     """Everything that was weighed, and what was decided.
 
-    chosen : (E,) in the optimum.   made : (E,) and with a margin that is large enough.
-    margin : (E,) of chosen candidates, force : (E,) force cost of the others; nats.
+    chosen : (E,) in the optimum.   own : (E,) both pieces are of one track of the engine.
+    made : (E,) in the optimum, and with a large enough margin or of one track; or a joint of one
+    track, where the optimum has another story but a doubtful one.   margin : (E,) of chosen candidates, force : (E,) force cost of the others; nats.
     following : (P,) piece that continues each, -1 for none.
     """
 
@@ -68,6 +69,7 @@ class Links:
     problem: Problem
     solution: Solution
     chosen: NDArray[np.bool_]
+    own: NDArray[np.bool_]
     made: NDArray[np.bool_]
     margin: Floats
     force: Floats
@@ -109,11 +111,32 @@ def link_pieces(
     force = force_costs(problem, components, answer, wanted, problem_frontier(problem))
     chosen = answer.row_candidate[found.earlier] == np.arange(len(found.earlier))
     margin = np.where(chosen, solution.row_margin[found.earlier], np.nan)
-    made = chosen & (margin >= settings.hindsight.link_margin)
+    # What the engine held together stays together if nothing is better, however close the call.
+    own = pieces.identity[found.earlier] == pieces.identity[found.later]
+    made = chosen & (own | (margin >= settings.hindsight.link_margin))
+    made |= _left_to_the_engine(found, own, made, solution, settings.hindsight.link_margin)
     following = np.full(len(pieces), -1, np.int64)
     following[found.earlier[made]] = found.later[made]
     force[chosen] = np.nan
-    return Links(found, problem, solution, chosen, made, margin, force, following)
+    return Links(found, problem, solution, chosen, own, made, margin, force, following)
+
+
+def _left_to_the_engine(
+    found: Candidates,
+    own: NDArray[np.bool_],
+    made: NDArray[np.bool_],
+    solution: Solution,
+    limit: float,
+) -> NDArray[np.bool_]:
+    """(E,) joints of one track that were cut, where what is better is too doubtful to be done."""
+    free_end = np.ones(len(solution.row_margin), np.bool_)
+    free_start = np.ones(len(solution.column_margin), np.bool_)
+    free_end[found.earlier[made]] = False
+    free_start[found.later[made]] = False
+    doubtful = np.minimum(solution.row_margin[found.earlier], solution.column_margin[found.later])
+    # Pieces of one track follow each other.
+    next_one = own & (found.later == found.earlier + 1)
+    return next_one & free_end[found.earlier] & free_start[found.later] & (doubtful < limit)
 
 
 def _prices_of_ends(

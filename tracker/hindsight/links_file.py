@@ -12,7 +12,8 @@ from tracker.log.model import Ints
 from tracker.results.table import missing_if_nan
 from tracker.results.track_files import write_csv_chunk
 
-MADE, DOUBTFUL, REFUSED = "linked", "too doubtful", "not linked"
+LINKED, REJOINED = "linked", "joined again"  # two tracks, or the parts of one
+DOUBTFUL, REFUSED = "too doubtful", "not linked"
 
 
 def links_table(found: Hindsight) -> pa.Table:
@@ -27,18 +28,19 @@ def links_table(found: Hindsight) -> pa.Table:
         empty = np.empty(0, np.int64)
         earlier = later = empty
         gap = distance = cost = margin = force = end = np.empty(0)
-        chosen = made = np.empty(0, np.bool_)
+        chosen = own = made = np.empty(0, np.bool_)
     else:
         weighed = links.candidates
         earlier, later = weighed.earlier, weighed.later
         gap, distance, cost = weighed.gap, weighed.distance, weighed.cost
-        chosen, made = links.chosen, links.made
+        chosen, own, made = links.chosen, links.own, links.made
         margin, force = links.margin, links.force
         end = links.problem.miss[earlier]
     ends, begins = pieces.last[earlier], pieces.first[later]
     called = _names(found)
     order = np.lexsort((later, begins, earlier, ends))
-    decision = np.where(made, MADE, np.where(chosen, DOUBTFUL, REFUSED))
+    decision = np.where(chosen, DOUBTFUL, REFUSED).astype("U12")
+    decision[made] = np.where(own, REJOINED, LINKED)[made]
     columns = {
         "earlier": pa.array(pieces.identity[earlier]),
         "later": pa.array(pieces.identity[later]),

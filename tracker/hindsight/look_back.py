@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 
 from tracker.hindsight.chains import join
-from tracker.hindsight.cutting import cut_at_gaps
+from tracker.hindsight.cutting import cut_in_doubt
 from tracker.hindsight.linking import Links, link_pieces
 from tracker.hindsight.noise import likeliest_noise, position_likelihood
 from tracker.hindsight.pieces import Collector, Pieces, Scans
@@ -42,12 +42,17 @@ class Hindsight:
     def facts(self) -> dict[str, Any]:
         """What run.json says of it."""
         links = self.links
+        nothing = np.empty(0, np.bool_)
+        chosen, own, made = (
+            (nothing,) * 3 if links is None else (links.chosen, links.own, links.made)
+        )
         return {
             "pieces": len(self.pieces),
             "objects": len(self.chains),
-            "candidate_links": 0 if links is None else len(links.chosen),
-            "links_made": 0 if links is None else int(links.made.sum()),
-            "links_too_doubtful": 0 if links is None else int((links.chosen & ~links.made).sum()),
+            "candidate_links": len(chosen),
+            "links_made": int((made & ~own).sum()),
+            "joined_again": int((made & own).sum()),
+            "links_too_doubtful": int((chosen & ~made).sum()),
             "largest_gap": 0.0 if links is None else abs(links.solution.gap),
             "sensor_moved": bool(np.any(self.common.maps != self.common.maps[:1])),
             "acceleration_noise": self.settings.motion.acceleration_noise,
@@ -75,7 +80,7 @@ def look_back(log: DetectionLog, collected: Collector, settings: Settings, born:
     z, variance = in_common_frame(log, tracks, common, model)
     if not len(tracks) or how.link_seconds == 0.0 or len(scans.time) < 2:
         return Hindsight(scans, tracks, tracks, None, common, settings, model)
-    pieces = cut_at_gaps(tracks, scans, how.cut_seconds)
+    pieces = cut_in_doubt(tracks, scans, how.cut_seconds, how.cut_margin)
     links = link_pieces(pieces, log, scans, common, model, settings, z, variance)
     chains = join(pieces, links, born)
     return Hindsight(scans, pieces, chains, links, common, settings, model)

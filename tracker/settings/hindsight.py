@@ -29,6 +29,15 @@ class HindsightSettings(Section):
         NonNegative,
         about("Where a track was unseen for longer than this, who it is is decided anew", "s"),
     ] = 0.5
+    cut_margin: Annotated[
+        float,
+        NonNegative,
+        about(
+            "And where a decision of the engine had a smaller margin than this; 0 lets them be, "
+            "0.5 nats is odds of 1.6 to 1",
+            "nats",
+        ),
+    ] = 0.5
     link_seconds: Annotated[
         float, NonNegative, about("Longest gap that is linked; 0 links nothing", "s")
     ] = 4.0
@@ -44,7 +53,11 @@ class HindsightSettings(Section):
     link_margin: Annotated[
         float,
         NonNegative,
-        about("A link with a smaller margin is not made; 2.3 nats is odds of 10 to 1", "nats"),
+        about(
+            "A link between two tracks with a smaller margin is not made; 2.3 nats is odds of 10 "
+            "to 1. What was one track is one again if nothing is better",
+            "nats",
+        ),
     ] = 2.3
     fill_seconds: Annotated[
         float, NonNegative, about("Longest gap whose rows are reported; 0 reports none", "s")
