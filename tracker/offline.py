@@ -121,16 +121,17 @@ def track_log(
         for frame in frames_of(used, settings):
             collector.add(frame, engine.step(frame))
         found = look_back(used, collector, settings, engine.table.born)
-        return _as_tracks(log, rows_in_hindsight(used, found, settings)[0])
+        return as_tracks(log, rows_in_hindsight(used, found, settings)[0])
     recorder = Recorder(settings, log.kind)
     parts: list[TrackRows] = []
     for frame in frames_of(used, settings):
         parts += recorder.add(frame, engine.step(frame))
     parts += recorder.finish()
-    return _as_tracks(log, TrackRows.join(parts) if parts else no_rows(log.kind))
+    return as_tracks(log, TrackRows.join(parts) if parts else no_rows(log.kind))
 
 
-def _as_tracks(log: DetectionLog, rows: TrackRows) -> Tracks:
+def as_tracks(log: DetectionLog, rows: TrackRows) -> Tracks:
+    """Rows of a log's tracks as `Tracks`."""
     return Tracks(
         name=log.name,
         kind=log.kind,

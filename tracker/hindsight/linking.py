@@ -61,7 +61,8 @@ class Links:
 
     chosen : (E,) in the optimum.   own : (E,) both pieces are of one track of the engine.
     made : (E,) in the optimum, and with a large enough margin or of one track; or a joint of one
-    track, where the optimum has another story but a doubtful one.   margin : (E,) of chosen candidates, force : (E,) force cost of the others; nats.
+    track, where the optimum tells another story but a doubtful one.
+    margin : (E,) of chosen candidates, force : (E,) force cost of the others; nats.
     following : (P,) piece that continues each, -1 for none.
     """
 

@@ -34,10 +34,10 @@ class HindsightSettings(Section):
         NonNegative,
         about(
             "And where a decision of the engine had a smaller margin than this; 0 lets them be, "
-            "0.5 nats is odds of 1.6 to 1",
+            "0.2 nats is odds of 1.2 to 1",
             "nats",
         ),
-    ] = 0.5
+    ] = 0.2
     link_seconds: Annotated[
         float, NonNegative, about("Longest gap that is linked; 0 links nothing", "s")
     ] = 4.0
