@@ -42,6 +42,37 @@ def test_there_and_back_again():
     np.testing.assert_allclose(covariance[:, 3, 3], 2.0 / (1.0 + 0.1 * scan) ** 2)
 
 
+def test_steps_add_up():
+    """A point that stands still in the world is at one place in the common frame."""
+    rng = np.random.default_rng(3)
+    steps = np.zeros((6, 2, 3))
+    place = [np.array([3.0, 4.0])]
+    for k in range(6):
+        angle = rng.normal(0, 0.2)
+        steps[k, :, :2] = 1.1 * np.array(
+            [[np.cos(angle), -np.sin(angle)], [np.sin(angle), np.cos(angle)]]
+        )
+        steps[k, :, 2] = rng.normal(0, 5, 2)
+        if k:
+            place.append(steps[k, :, :2] @ place[-1] + steps[k, :, 2])
+    there = CommonFrame.of_steps(steps).forth(np.array(place), np.arange(6))
+    np.testing.assert_allclose(there, np.repeat([[3.0, 4.0]], 6, axis=0), atol=1e-9)
+
+
+def test_a_known_motion_is_used_if_it_predicts_better():
+    frame, z = staggered()
+    log = log_of(frame, z + sway(frame))
+    chosen = settings("motion.acceleration_noise=8", "hindsight.noise=measured")
+    collector, born = collected(log, chosen)
+    numbers = np.arange(1, log.frame_count + 1)
+    true = CommonFrame.shifts(-sway(numbers))
+    wrong = CommonFrame.shifts(9.0 * sway(3 * numbers))
+    found = look_back(log, collector, chosen, born, true)
+    assert found.common is true
+    assert (found.links.made & ~found.links.own).sum() == 18
+    assert look_back(log, collector, chosen, born, wrong).common is not wrong
+
+
 def test_a_still_sensor_changes_nothing():
     z = np.random.default_rng(1).normal(size=(6, 4))
     scan = np.array([0, 1, 2, 2, 1, 0])
@@ -76,7 +107,8 @@ def test_too_few_witnesses_say_nothing():
 def links_made(log, *overrides):
     chosen = settings("motion.acceleration_noise=8", "hindsight.noise=measured", *overrides)
     collector, born = collected(log, chosen)
-    return int(look_back(log, collector, chosen, born).links.made.sum())
+    links = look_back(log, collector, chosen, born).links
+    return int((links.made & ~links.own).sum())
 
 
 def staggered():

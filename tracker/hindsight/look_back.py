@@ -65,17 +65,25 @@ def check_hindsight(settings: Settings, log: DetectionLog) -> None:
     smoothable(motion_model(settings, log.kind))
 
 
-def look_back(log: DetectionLog, collected: Collector, settings: Settings, born: int) -> Hindsight:
+def look_back(
+    log: DetectionLog,
+    collected: Collector,
+    settings: Settings,
+    born: int,
+    known: CommonFrame | None = None,
+) -> Hindsight:
     """Decide the identities anew.
 
     log : what the engine saw.   collected : what it decided.   born : its highest id.
+    known : a common frame from elsewhere, such as the engine's estimate of its camera's motion;
+    it is used if it predicts the log's own tracks better than others.
 
     Raises SettingsError for a motion model that cannot smooth, CertificateError if the links are
     not proved optimal.
     """
     how = settings.hindsight
     scans, tracks = collected.finish()
-    common, settings = _common_frame(log, tracks, scans, settings)
+    common, settings = _common_frame(log, tracks, scans, settings, known)
     model = smoothable(motion_model(settings, log.kind))
     z, variance = in_common_frame(log, tracks, common, model)
     if not len(tracks) or how.link_seconds == 0.0 or len(scans.time) < 2:
@@ -87,7 +95,11 @@ def look_back(log: DetectionLog, collected: Collector, settings: Settings, born:
 
 
 def _common_frame(
-    log: DetectionLog, tracks: Pieces, scans: Scans, settings: Settings
+    log: DetectionLog,
+    tracks: Pieces,
+    scans: Scans,
+    settings: Settings,
+    known: CommonFrame | None,
 ) -> tuple[CommonFrame, Settings]:
     """The frame that predicts the log's own tracks better, and settings with the noise there.
 
@@ -98,6 +110,8 @@ def _common_frame(
     choices = [still]
     if how.common_motion == "measured" and len(tracks):
         choices.append(measure_common_motion(tracks, len(scans.time), log.z))
+    if known is not None:
+        choices.append(known)
     found: list[tuple[CommonFrame, Settings]] = []
     likelihoods = []
     for common in choices if len(tracks) else []:

@@ -43,6 +43,20 @@ class CommonFrame:
         frame.maps[:, :, 2] = shift
         return frame
 
+    @classmethod
+    def of_steps(cls, steps: Floats) -> CommonFrame:
+        """From (S, 2, 3) maps [A | b] of the scan before into each scan; the first is not used.
+
+        This is how a motion that was estimated scan by scan, by whatever means, gets in here.
+        """
+        frame = cls.still(len(steps))
+        for k in range(1, len(steps)):
+            back = np.linalg.inv(steps[k, :, :2])
+            turn = frame.maps[k - 1, :, :2] @ back
+            frame.maps[k, :, :2] = turn
+            frame.maps[k, :, 2] = frame.maps[k - 1, :, 2] - turn @ steps[k, :, 2]
+        return frame
+
     def scale(self, scan: Ints) -> Floats:
         """(n,) by what lengths grow on the way to the common frame."""
         a = self.maps[scan]
