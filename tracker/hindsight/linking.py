@@ -60,8 +60,8 @@ class Links:
     """Everything that was weighed, and what was decided.
 
     chosen : (E,) in the optimum.   own : (E,) both pieces are of one track of the engine.
-    made : (E,) in the optimum, and with a large enough margin or of one track; or a joint of one
-    track, where the optimum tells another story but a doubtful one.
+    made : (E,) in the optimum with a large enough margin; or a joint of one track, where no other
+    story is told with such a margin.
     margin : (E,) of chosen candidates, force : (E,) force cost of the others; nats.
     following : (P,) piece that continues each, -1 for none.
     """
@@ -112,9 +112,8 @@ def link_pieces(
     force = force_costs(problem, components, answer, wanted, problem_frontier(problem))
     chosen = answer.row_candidate[found.earlier] == np.arange(len(found.earlier))
     margin = np.where(chosen, solution.row_margin[found.earlier], np.nan)
-    # What the engine held together stays together if nothing is better, however close the call.
     own = pieces.identity[found.earlier] == pieces.identity[found.later]
-    made = chosen & (own | (margin >= settings.hindsight.link_margin))
+    made = chosen & (margin >= settings.hindsight.link_margin)
     made |= _left_to_the_engine(found, own, made, solution, settings.hindsight.link_margin)
     following = np.full(len(pieces), -1, np.int64)
     following[found.earlier[made]] = found.later[made]
@@ -129,7 +128,7 @@ def _left_to_the_engine(
     solution: Solution,
     limit: float,
 ) -> NDArray[np.bool_]:
-    """(E,) joints of one track that were cut, where what is better is too doubtful to be done."""
+    """(E,) joints of one track that were cut, where nothing is better without a doubt."""
     free_end = np.ones(len(solution.row_margin), np.bool_)
     free_start = np.ones(len(solution.column_margin), np.bool_)
     free_end[found.earlier[made]] = False
