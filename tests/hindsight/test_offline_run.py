@@ -102,11 +102,14 @@ def test_looking_back_scores_better(folder, capsys):
     assert scores["offline"]["mota"] > scores["online"]["mota"]
 
 
-def test_causes_are_those_of_the_engines_tracks(folder, tmp_path):
+def test_causes_are_those_of_the_engines_tracks(folder, capsys):
     truth = read_truth(SAMPLE)
     one = diagnose(folder / "offline", truth)
     other = diagnose(folder / "online", truth)
     assert one.findings == other.findings
+    truth_file = str(SAMPLE / "truth.csv")
+    assert run(["evaluate", str(folder / "offline"), "--truth", truth_file, "--causes"]) == 0
+    assert "causes are those of the engine's own tracks" in capsys.readouterr().err
 
 
 def test_a_track_is_explained_under_either_name(folder):

@@ -58,11 +58,8 @@ def join(pieces: Pieces, links: Links, born: int) -> Pieces:
 def _within(pieces: Pieces) -> Floats:
     """(N,) log confidence of the engine's decisions since each piece began.
 
-    Where a piece begins at a cut, the engine's decision there is the one that is taken anew.
+    Where a piece begins at a cut, the engine's decision there is the one that is taken anew; at a
+    track's birth nothing has been decided yet.
     """
-    piece = pieces.of_detection
-    _, earliest = np.unique(pieces.identity, return_index=True)
     first = pieces.log_confidence[pieces.start[:-1]]
-    # Pieces of one track follow each other in order of time.
-    first[earliest] = 0.0
-    return pieces.log_confidence - first[piece]
+    return pieces.log_confidence - first[pieces.of_detection]
