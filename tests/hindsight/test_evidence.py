@@ -116,16 +116,19 @@ def test_scans_that_are_far_apart_are_no_gaps():
 
 
 def test_a_decision_with_a_small_margin_is_cut():
-    scan = np.arange(5)
+    scan = np.array([0, 1, 2, 3, 4])
     margin = np.array([9.0, 0.1, 9.0, 0.3])
     confidence = np.concatenate(([0.0], np.cumsum(-np.log1p(np.exp(-margin)))))
     pieces = Pieces(
         np.array([0, 5]), np.array([1]), scan, np.arange(5), np.ones(5, int), confidence
     )
-    scans = Scans(scan + 1, 0.1 * scan)
+    scans = Scans(scan + 1, 0.9 * scan)
     assert cut_in_doubt(pieces, scans, 0.5, 0.2).start.tolist() == [0, 2, 5]
     assert cut_in_doubt(pieces, scans, 0.5, 0.4).start.tolist() == [0, 2, 4, 5]
     assert cut_in_doubt(pieces, scans, 0.5, 0.0).start.tolist() == [0, 5]
+    # Closer together than a second, only the closest call is cut.
+    fast = Scans(scan + 1, 0.4 * scan)
+    assert cut_in_doubt(pieces, fast, 0.5, 0.4).start.tolist() == [0, 2, 5]
 
 
 def test_tracks_that_nothing_is_done_to_keep_their_confidence():

@@ -324,9 +324,9 @@ def test_a_contested_decision_is_taken_anew_with_both_sides_known():
         ]
         return sum(len({*part[:20], *part[-20:]}) == 1 for part in parts)
 
-    kept, mended = right(0.0), right(0.2)
-    assert kept < 24
-    assert mended >= kept + 4
+    kept, mended = right(0.0), right(1.0)
+    assert kept < 18
+    assert mended == 24
 
 
 def test_confidence_goes_on_along_the_links():

@@ -280,8 +280,8 @@ def _trace(
     for k, (name, (path, _)) in enumerate(sources.items()):
         if looked_back(path):
             typer.echo(
-                f"{name}: note: causes are those of the engine's own tracks (tracks_online), not of "
-                "the identities in hindsight that are scored",
+                f"{name}: note: causes are those of the engine's own tracks (tracks_online); what "
+                "is scored are the identities in hindsight",
                 err=True,
             )
         with with_ledger(path, logs[k] if logs else None) as folder:

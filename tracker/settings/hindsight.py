@@ -33,11 +33,11 @@ class HindsightSettings(Section):
         float,
         NonNegative,
         about(
-            "And where a decision of the engine had a smaller margin than this; 0 lets them be, "
-            "0.2 nats is odds of 1.2 to 1",
+            "And where a decision of the engine had a smaller margin than this (of several within "
+            "a second the closest call); 0 lets them be, 1 nat is odds of 2.7 to 1",
             "nats",
         ),
-    ] = 0.2
+    ] = 1.0
     link_seconds: Annotated[
         float, NonNegative, about("Longest gap that is linked; 0 links nothing", "s")
     ] = 4.0
