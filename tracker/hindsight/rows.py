@@ -39,8 +39,11 @@ def smoothed_rows(
     grid = spread_out(pieces)
     states = filter_forward(model, grid, scans, z, variance)
     smooth_backward(model, grid, scans, states)
+    velocity = states.mean[:, d : 2 * d]
+    if model.states < 2 * d:  # a model without rates
+        velocity = np.zeros((len(grid), d))
     estimate, rate, covariance = common.back(
-        states.mean[:, :d], states.mean[:, d : 2 * d], states.covariance[:, :d, :d], grid.scan
+        states.mean[:, :d], velocity, states.covariance[:, :d, :d], grid.scan
     )
     seen = grid.detection >= 0
     known, gap = _around(grid, scans)

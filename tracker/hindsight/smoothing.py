@@ -24,7 +24,12 @@ BATCH_ROWS = 50_000
 
 @runtime_checkable
 class Smoothable(Protocol):
-    """What smoothing needs of a motion model."""
+    """What smoothing needs of a motion model.
+
+    Its states begin with the measured components, in the measurement's order; their rates, if it
+    has them, come next. A new state knows of the measured components what the detection says, and
+    of the others a prior that does not depend on these.
+    """
 
     dimension: int
     states: int
