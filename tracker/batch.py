@@ -41,6 +41,7 @@ def associate_logs(
     workers: int = 1,
     extensions: tuple[Path, ...] = (),
     watch: Watch | None = None,
+    offline: bool = False,
 ) -> Iterator[Outcome]:
     """Associate each log into a run folder; yields the outcomes in the order of `logs`.
 
@@ -48,13 +49,14 @@ def associate_logs(
     a folder named after the log in ``runs/``.   reading : keyword arguments of `read_log`.
     extensions : Python files that are run first, in every process.
     watch : wraps the frames of each log to show progress, in a single process only.
+    offline : decide identities anew once each log is over.
 
     Raises UsageError where two logs would get the same folder or an extension fails.
     """
     run_extensions(extensions)
     folders = run_folders(logs, out)
     jobs = [
-        (Outcome(log, folder, folder.name if len(logs) > 1 else None), settings, reading)
+        (Outcome(log, folder, folder.name if len(logs) > 1 else None), settings, reading, offline)
         for log, folder in zip(logs, folders, strict=True)
     ]
     if workers == 1 or len(jobs) == 1:
@@ -125,13 +127,17 @@ def _name_of(log: Path) -> str:
 
 
 def _associate_one(
-    outcome: Outcome, settings: Settings, reading: dict[str, Any], watch: Watch | None = None
+    outcome: Outcome,
+    settings: Settings,
+    reading: dict[str, Any],
+    offline: bool = False,
+    watch: Watch | None = None,
 ) -> Outcome:
     try:
         log = read_log(outcome.log, frame_rate_hz=settings.time.frame_rate_hz, **reading)
         if outcome.name is not None:
             log = replace(log, name=outcome.name)
-        outcome.facts = associate_log(log, settings, outcome.folder, watch=watch)
+        outcome.facts = associate_log(log, settings, outcome.folder, offline=offline, watch=watch)
     except MargentError as error:
         outcome.error = error
     return outcome

@@ -13,10 +13,17 @@ from typing import Any
 import numpy as np
 
 from tracker.engine import Engine, FrameResult
+from tracker.hindsight import (
+    Collector,
+    check_hindsight,
+    look_back,
+    rows_in_hindsight,
+    write_hindsight,
+)
 from tracker.log.model import DetectionLog, Frame
 from tracker.results.folder import atomic_folder
 from tracker.results.recorder import Recorder, TrackRows, no_rows
-from tracker.results.tracks import Tracks
+from tracker.results.tracks import TRACKS, TRACKS_ONLINE, Tracks
 from tracker.results.write import RunWriter, write_json
 from tracker.settings import Settings
 
@@ -96,20 +103,35 @@ def used_detections(log: DetectionLog, settings: Settings) -> DetectionLog:
     return log.select(~(log.score < floor))
 
 
-def track_log(log: DetectionLog, settings: Settings | None = None) -> Tracks:
+def track_log(
+    log: DetectionLog, settings: Settings | None = None, *, offline: bool = False
+) -> Tracks:
     """Run a log through the engine and return its tracks, as the run folder would hold them.
 
-    Raises what `Engine.step` raises.
+    offline : decide identities anew once the log is over (`tracker.hindsight`).
+
+    Raises what `Engine.step` raises, and SettingsError for a motion model that cannot look back.
     """
     settings = settings or Settings()
     used = used_detections(log, settings)
-    engine = Engine(settings, log.kind, facts=log.facts, explain=False)
+    engine = Engine(settings, log.kind, facts=log.facts, explain=offline)
+    if offline:
+        check_hindsight(settings, log)
+        collector = Collector()
+        for frame in frames_of(used, settings):
+            collector.add(frame, engine.step(frame))
+        found = look_back(used, collector, settings, engine.table.born)
+        return as_tracks(log, rows_in_hindsight(used, found, settings)[0])
     recorder = Recorder(settings, log.kind)
     parts: list[TrackRows] = []
     for frame in frames_of(used, settings):
         parts += recorder.add(frame, engine.step(frame))
     parts += recorder.finish()
-    rows = TrackRows.join(parts) if parts else no_rows(log.kind)
+    return as_tracks(log, TrackRows.join(parts) if parts else no_rows(log.kind))
+
+
+def as_tracks(log: DetectionLog, rows: TrackRows) -> Tracks:
+    """Rows of a log's tracks as `Tracks`."""
     return Tracks(
         name=log.name,
         kind=log.kind,
@@ -128,23 +150,33 @@ def track_log(log: DetectionLog, settings: Settings | None = None) -> Tracks:
 
 
 def associate_log(
-    log: DetectionLog, settings: Settings, out: Path, *, watch: Watch | None = None
+    log: DetectionLog,
+    settings: Settings,
+    out: Path,
+    *,
+    offline: bool = False,
+    watch: Watch | None = None,
 ) -> dict[str, Any]:
     """Run a log through the engine into the run folder `out`; returns the facts of run.json.
 
-    watch : wraps the frames, to show progress.
+    offline : decide identities anew once the log is over; the engine's own tracks, which the
+    ledger speaks of, are then in tracks_online.   watch : wraps the frames, to show progress.
 
-    Raises OutputError where the folder cannot be written, and what `Engine.step` raises. Nothing
-    is left behind in either case.
+    Raises OutputError where the folder cannot be written, what `Engine.step` raises, and
+    SettingsError for a motion model that cannot look back. Nothing is left behind in any case.
     """
     began = time.perf_counter()
+    if offline:
+        check_hindsight(settings, log)
+    collector = Collector() if offline else None
+    name = TRACKS_ONLINE if offline else TRACKS
     used = used_detections(log, settings)
     engine = Engine(settings, log.kind, facts=log.facts)
     proofs = ProofSummary()
     total = frame_total(used, settings)
     seconds = np.zeros(total)
     with atomic_folder(out, marker="run.json") as folder:
-        with RunWriter(folder, log, settings) as writer:
+        with RunWriter(folder, log, settings, tracks=name) as writer:
             frames: Iterable[Frame] = frames_of(used, settings)
             for k, frame in enumerate(watch(frames, total) if watch else frames):
                 start = time.perf_counter()
@@ -152,7 +184,12 @@ def associate_log(
                 seconds[k] = time.perf_counter() - start
                 proofs.add(result)
                 writer.add(frame, result)
+                if collector is not None:
+                    collector.add(frame, result)
             facts = _facts(log, used, proofs, engine.table.born)
+            if collector is not None:
+                found = look_back(used, collector, settings, engine.table.born)
+                facts["hindsight"] = write_hindsight(folder, used, found, settings)
             writer.finish(facts)
         facts["counts"] |= writer.counts
         write_json(folder / "timings.json", _timings(seconds, time.perf_counter() - began))

@@ -48,7 +48,7 @@ class RunRecord:
         self.kind: Kind = ledger.kind
         self._rules = association_rules(self.settings, self.kind)
         self.rule = self._rules[0]
-        self.tracks: Tracks = read_run(folder)
+        self.tracks: Tracks = read_run(folder, online=True)  # as the ledger has them
         names = filter_names(self.kind)
         decisions = pq.read_table(
             self.folder / "decisions.parquet",

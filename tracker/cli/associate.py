@@ -39,6 +39,13 @@ def associate(
     strict: Annotated[
         bool, typer.Option("--strict", help="Stop with exit code 2 if any row would be rejected.")
     ] = False,
+    offline: Annotated[
+        bool,
+        typer.Option(
+            "--offline",
+            help="Once a log is over, decide identities anew: smooth, link and fill ([hindsight]).",
+        ),
+    ] = False,
     extension: Annotated[
         list[Path] | None,
         typer.Option(
@@ -56,6 +63,9 @@ def associate(
 
     Reads CSV, Parquet, NDJSON or the public benchmark text layout, boxes or points, and writes a
     run folder: tracks.csv, tracks.parquet, events.csv, rejected.csv, settings.toml, run.json.
+
+    With --offline tracks.csv has the identities that are only known afterwards, links.csv says how
+    they came about, and tracks_online.csv keeps the engine's own.
 
     Example: margent associate sample_sequences/forecourt --out runs/forecourt
     """
@@ -77,7 +87,7 @@ def associate(
         "drop_identities": drop_identities,
         "strict": strict,
     }
-    _associate_all(logs, out, chosen, reading, workers, tuple(extension or ()))
+    _associate_all(logs, out, chosen, reading, workers, tuple(extension or ()), offline)
 
 
 def _associate_all(
@@ -87,6 +97,7 @@ def _associate_all(
     reading: dict,
     workers: int,
     extensions: tuple[Path, ...],
+    offline: bool,
 ) -> None:
     """All logs, in one process or several; one log's error does not stop the others."""
     from tracker.batch import associate_logs
@@ -103,6 +114,7 @@ def _associate_all(
         workers,
         extensions,
         watch=lambda frames, total: watched(frames, total=total, label="frames"),
+        offline=offline,
     )
     if workers > 1 and several:
         outcomes = watched(outcomes, total=len(paths), label="logs")
@@ -135,3 +147,11 @@ def _report(facts: dict, folder: Path) -> None:
         f"(every assignment proved optimal, largest gap {proof['largest_gap']:.1e})",
         file=sys.stderr,
     )
+    if "hindsight" in facts:
+        looked = facts["hindsight"]
+        print(
+            f"{facts['name']}: in hindsight {looked['objects']} objects, by {looked['links_made']} "
+            f"links between tracks, listed with margins in {folder / 'links.csv'}; the engine's "
+            "own tracks are in tracks_online",
+            file=sys.stderr,
+        )

@@ -244,11 +244,18 @@ def _trace(
 ) -> dict[str, Diagnosis]:
     """Diagnose every run and write its causes.csv."""
     from tracker.causes import diagnose, with_ledger, write_causes
+    from tracker.results.read import looked_back
 
     if logs is not None and len(logs) != len(sources):
         raise UsageError(f"{len(sources)} runs but {len(logs)} logs; give one each, in order")
     found = {}
     for k, (name, (path, _)) in enumerate(sources.items()):
+        if looked_back(path):
+            typer.echo(
+                f"{name}: note: causes are those of the engine's own tracks (tracks_online); what "
+                "is scored are the identities in hindsight",
+                err=True,
+            )
         with with_ledger(path, logs[k] if logs else None) as folder:
             found[name] = diagnose(folder, truths[name], scopes[name])
         write_causes(found[name], path / "causes.csv")

@@ -11,6 +11,7 @@ from tracker.diagnosis.frame_record import FrameRecord, some_of
 from tracker.diagnosis.history import moments
 from tracker.diagnosis.inquiry import Inquiry
 from tracker.diagnosis.ledger_reading import RunLedger
+from tracker.diagnosis.two_names import engine_track
 from tracker.diagnosis.views import detection_views, track_views
 from tracker.diagnosis.why_not import track_span, why_not
 from tracker.errors import InputError, UsageError
@@ -63,6 +64,8 @@ def explain(
         _check_detection(inquiry, detection)
     notes: list[str] = []
     if track is not None:
+        live = record.row_of(track) is not None
+        track, notes = engine_track(inquiry.ledger, frame, track, live)
         decisions = _about_track(inquiry, track, notes)
         wanted = [*others, *(_detection_at(inquiry, number) for number in other_lines)]
         for number in wanted:

@@ -79,7 +79,8 @@ def moments(ledger: RunLedger, track: int, life: Life, frames: Sequence[int]) ->
         if row["chosen"] and (known is None or known["decision"] == "miss"):
             decided[row["frame"]] = row  # a later tier may pair what an earlier one missed
     states = _by_frame(ledger, "predictions", ("frame", "state"), first, last, track)
-    shown = _by_frame(ledger, "tracks", ("frame", "time", "line", "confidence"), first, last, track)
+    columns = ("frame", "time", "line", "confidence")
+    shown = _by_frame(ledger, ledger.own_tracks, columns, first, last, track)
     limit = ledger.settings.ledger.contested_margin
     found = []
     for frame in frames:

@@ -20,7 +20,8 @@ import pyarrow.parquet as pq
 from tracker.errors import InputError
 from tracker.ledger import filter_names
 from tracker.log.model import Kind
-from tracker.results.read import read_facts
+from tracker.results.read import looked_back, read_facts
+from tracker.results.tracks import TRACKS, TRACKS_ONLINE
 from tracker.results.write import EVENT_COLUMNS
 from tracker.settings import load_settings
 
@@ -77,6 +78,9 @@ class RunLedger:
                 f"is not what this version writes: {error}", path=self.folder / "run.json"
             ) from None
         self.coordinates = filter_names(self.kind)
+        # The ledger speaks of the engine's tracks; a run that looked back has others in `tracks`.
+        self.looked_back = looked_back(folder)
+        self.own_tracks = TRACKS_ONLINE if self.looked_back else TRACKS
 
     def rows(
         self,

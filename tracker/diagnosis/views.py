@@ -14,8 +14,9 @@ from tracker.diagnosis.inquiry import Inquiry
 def track_views(inquiry: Inquiry, tracks: set[int]) -> tuple[TrackView, ...]:
     """Describe some tracks, in order of id."""
     number = inquiry.record.number
+    own = inquiry.ledger.own_tracks
     rows = inquiry.ledger.rows(
-        "tracks", number, number, columns=("track", "confidence", "label")
+        own, number, number, columns=("track", "confidence", "label")
     ).to_pylist()
     shown = {row["track"]: row for row in rows if row["track"] in tracks}
     return tuple(_track(inquiry, track, shown.get(track, {})) for track in sorted(tracks))

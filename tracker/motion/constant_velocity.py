@@ -60,6 +60,12 @@ class ConstantVelocity:
         if self._boxes:
             bound_shrinking(mean, 2, step_seconds)
 
+    def transition(self, mean: Floats, step_seconds: float) -> Floats:
+        """(n, s, s) F of (n, s) states, the same for all of them."""
+        step = np.eye(self.states)
+        step[np.arange(self.dimension), self.dimension + np.arange(self.dimension)] = step_seconds
+        return np.repeat(step[None], len(mean), axis=0)
+
     def measurement_variance(self, z: Floats, sigma: Floats | None) -> Floats:
         """(m, d) variances of detections: from their sigmas, where nan or none from the settings.
 

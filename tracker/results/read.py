@@ -12,7 +12,7 @@ import pyarrow.parquet as pq
 
 from tracker.errors import InputError
 from tracker.log.model import Floats, Kind, SequenceFacts, box_centre
-from tracker.results.tracks import Tracks, TrackState
+from tracker.results.tracks import TRACKS, TRACKS_ONLINE, Tracks, TrackState
 
 
 def is_run(path: str | Path) -> bool:
@@ -35,10 +35,19 @@ def read_facts(folder: str | Path) -> dict[str, Any]:
         raise InputError(f"cannot be read: {error}", path=path) from None
 
 
-def read_run(folder: str | Path) -> Tracks:
-    """The tracks of a run folder. Raises InputError if it is not one."""
+def looked_back(folder: str | Path) -> bool:
+    """Whether a run's tracks were decided anew once its log was over."""
+    return (Path(folder) / f"{TRACKS_ONLINE}.parquet").is_file()
+
+
+def read_run(folder: str | Path, *, online: bool = False) -> Tracks:
+    """The tracks of a run folder. Raises InputError if it is not one.
+
+    online : the engine's own tracks, of which the ledger speaks, where the run looked back.
+    """
     facts = read_facts(folder)
-    path = Path(folder) / "tracks.parquet"
+    name = TRACKS_ONLINE if online and looked_back(folder) else TRACKS
+    path = Path(folder) / f"{name}.parquet"
     try:
         table = pq.read_table(path)
         kind = Kind(facts["kind"])

@@ -10,6 +10,11 @@ from numpy.typing import NDArray
 
 from tracker.log.model import Codes, Floats, Ints, Kind, SequenceFacts
 
+# Files of a run folder, without their endings.
+TRACKS = "tracks"
+# In a run that looked back: the engine's own tracks, of which the ledger speaks.
+TRACKS_ONLINE = "tracks_online"
+
 
 class TrackState(IntEnum):
     """Lifecycle state of a track in one frame; the value is the code in arrays and kernels."""

@@ -10,16 +10,16 @@ from typing import Any, Self
 
 import numpy as np
 import pyarrow as pa
-import pyarrow.csv
-import pyarrow.parquet as pq
 
 from tracker.engine import FrameResult, Transitions
 from tracker.ledger import Ledger
 from tracker.lifecycle.rules import Reason
 from tracker.log.model import DetectionLog, Floats, Frame, Ints, Rejection
-from tracker.results.parquet import ROW_GROUP, open_parquet
-from tracker.results.recorder import Recorder, TrackRows, no_rows
-from tracker.results.table import STATE_WORDS, csv_table, parquet_table
+from tracker.results.parquet import ROW_GROUP
+from tracker.results.recorder import Recorder
+from tracker.results.table import STATE_WORDS
+from tracker.results.track_files import TrackFiles, write_csv_chunk
+from tracker.results.tracks import TRACKS
 from tracker.settings import Settings, settings_as_toml
 
 CAMERA_COLUMNS = (
@@ -41,21 +41,22 @@ REJECTION_COLUMNS = ("line", "column", "reason", "text")
 class RunWriter:
     """Writes into `folder`, which must exist; use as a context manager.
 
+    tracks : what the files of tracks are called.
+
     The rows' order and grouping depend on the log and the settings alone, so the same input gives
     the same bytes.
     """
 
-    def __init__(self, folder: Path, log: DetectionLog, settings: Settings) -> None:
+    def __init__(
+        self, folder: Path, log: DetectionLog, settings: Settings, *, tracks: str = TRACKS
+    ) -> None:
         self._folder = folder
         self._log = log
         self._settings = settings
         self._recorder = Recorder(settings, log.kind)
         self._ledger = Ledger(folder, log.kind, settings, log.labels)
-        self._waiting: list[TrackRows] = []
-        self._waiting_rows = 0
-        self._parquet: pq.ParquetWriter | None = None
         self.counts = {"tracks_confirmed": 0, "track_rows": 0, "reported_rows": 0, "events": 0}
-        self._tracks = (folder / "tracks.csv").open("wb")
+        self._tracks = TrackFiles(folder, tracks, log)
         self._events = (folder / "events.csv").open("wb")
         self._events.write((",".join(EVENT_COLUMNS) + "\n").encode())
         self._camera: list[tuple[float, ...]] = []
@@ -74,8 +75,6 @@ class RunWriter:
         self._ledger.close()
         self._tracks.close()
         self._events.close()
-        if self._parquet is not None:
-            self._parquet.close()
 
     def add(self, frame: Frame, result: FrameResult) -> None:
         """Take one frame's result in."""
@@ -84,14 +83,15 @@ class RunWriter:
             self._camera.append((result.number, *result.camera.values))
         self._ledger.add(frame, result)
         for rows in self._recorder.add(frame, result):
-            self._wait(rows)
+            self._tracks.add(rows)
 
     def finish(self, facts: dict[str, Any]) -> None:
         """Write everything that was held back, and `facts` as run.json."""
         for rows in self._recorder.finish():
-            self._wait(rows)
-        self._flush()
+            self._tracks.add(rows)
+        self._tracks.finish()
         self._flush_events()
+        self.counts |= self._tracks.counts
         self.counts["contested_decisions"] = self._ledger.contested
         self.counts["tracks_confirmed"] = self._recorder.confirmed
         if self._camera:
@@ -121,29 +121,6 @@ class RunWriter:
         self._events_waiting = []
         self._events_written = self.counts["events"]
 
-    def _wait(self, rows: TrackRows) -> None:
-        self._waiting.append(rows)
-        self._waiting_rows += len(rows)
-        if self._waiting_rows >= ROW_GROUP:
-            self._flush()
-
-    def _flush(self) -> None:
-        if not self._waiting:
-            if self._parquet is not None:
-                return
-            self._waiting = [no_rows(self._log.kind)]  # a run without tracks has its files too
-        kind, labels = self._log.kind, self._log.labels
-        rows = TrackRows.join(self._waiting)
-        self._waiting, self._waiting_rows = [], 0
-        first = self._parquet is None
-        table = parquet_table(rows, kind, labels)
-        if self._parquet is None:
-            self._parquet = open_parquet(self._folder / "tracks.parquet", table.schema)
-        self._parquet.write_table(table, row_group_size=ROW_GROUP)
-        write_csv_chunk(self._tracks, csv_table(rows, kind, labels), header=first)
-        self.counts["track_rows"] += len(rows)
-        self.counts["reported_rows"] += int(rows.reported.sum())
-
 
 def events_table(parts: list[tuple[Ints, Floats, Transitions]]) -> pa.Table:
     """Events as words: state before (none at a birth), state after, reason."""
@@ -157,25 +134,6 @@ def events_table(parts: list[tuple[Ints, Floats, Transitions]]) -> pa.Table:
         REASON_WORDS.take(pa.array(np.concatenate([events.reason for _, _, events in parts]))),
     )
     return pa.table(dict(zip(EVENT_COLUMNS, columns, strict=True)))
-
-
-def write_csv_chunk(sink: Any, table: pa.Table, *, header: bool) -> None:
-    """Append a table to a CSV; text is quoted only where it must be."""
-    if header:
-        sink.write((",".join(table.column_names) + "\n").encode())
-    plain = not any(
-        pa.types.is_string(field.type) and _needs_quotes(table[field.name])
-        for field in table.schema
-    )
-    options = pa.csv.WriteOptions(include_header=False, quoting_style="none" if plain else "needed")
-    pa.csv.write_csv(table, sink, options)
-
-
-def _needs_quotes(words: pa.ChunkedArray) -> bool:
-    return any(
-        word is not None and any(sign in word for sign in ',"\n\r')
-        for word in words.unique().to_pylist()
-    )
 
 
 def write_camera(path: Path, steps: list[tuple[float, ...]]) -> None:

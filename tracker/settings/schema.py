@@ -19,6 +19,7 @@ from tracker.settings.fields import (
     Section,
     about,
 )
+from tracker.settings.hindsight import HindsightSettings
 from tracker.settings.lifecycle import LifecycleSettings
 
 
@@ -363,3 +364,4 @@ class Settings(Section):
     lifecycle: LifecycleSettings = LifecycleSettings()
     output: OutputSettings = OutputSettings()
     ledger: LedgerSettings = LedgerSettings()
+    hindsight: HindsightSettings = HindsightSettings()
