@@ -60,7 +60,7 @@ class Chains:
         early = self.position < share * self.log.frame_count
         keep = ~early if after else early
         return replace(
-            self, position=self.position[keep], chain=self.chain[keep],
+            self, position=self.position[keep], chain=_by_birth(self.chain[keep]),
             detection=self.detection[keep],
         )  # fmt: skip
 
@@ -84,13 +84,18 @@ def link(
     chain = np.empty(len(order), np.int64)
     chain[order] = np.cumsum(begins) - 1
     by_time = np.lexsort((chain, position))
-    # Chains are numbered by when they begin, so that those alive are close together.
-    _, first, dense = np.unique(chain[by_time], return_index=True, return_inverse=True)
+    return Chains(
+        log, position[by_time], _by_birth(chain[by_time]), detection[by_time],
+        _camera_steps(log, settings),
+    )  # fmt: skip
+
+
+def _by_birth(chain: Ints) -> Ints:
+    """Chains numbered by when they begin, so that those alive are close together."""
+    _, first, dense = np.unique(chain, return_index=True, return_inverse=True)
     rank = np.empty(len(first), np.int64)
     rank[np.argsort(first)] = np.arange(len(first))
-    return Chains(
-        log, position[by_time], rank[dense], detection[by_time], _camera_steps(log, settings)
-    )
+    return rank[dense]
 
 
 def _scan(log: DetectionLog) -> float:
