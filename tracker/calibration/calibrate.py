@@ -8,6 +8,7 @@ from typing import Any
 
 from tracker.calibration import detection as seen
 from tracker.calibration import lifecycle, noise, selftaught
+from tracker.calibration.coverage import hold_gate
 from tracker.calibration.evidence import Evidence
 from tracker.calibration.matching import Matched, match
 from tracker.calibration.noise import Chains
@@ -79,7 +80,7 @@ def calibrate(
     density = seen.new_density(found, distance_threshold)
     chains = [noise.chains_of(item, start) for item in found]
     held_out = _held_out(chains, start)
-    tuned, sigmas = noise.fit_noise(chains, start)
+    tuned, sigmas = hold_gate(chains, *noise.fit_noise(chains, start))
     evidence = [share, density, *sigmas]
     tuned = _adopt(tuned, evidence)
     later = [lifecycle.coasting(found), lifecycle.birth_score(found)]
