@@ -25,6 +25,7 @@ def main() -> None:
     parser = argparse.ArgumentParser(description=__doc__)
     parser.add_argument("--real", type=Path)
     parser.add_argument("--scene", action="append", choices=list(SCENES))
+    parser.add_argument("--pattern", default="detections_*.txt")
     asked = parser.parse_args()
     print(f"{'data':12} {'default':>8} {'calibrated':>10}")
     for scene in asked.scene or ([] if asked.real else SCENES):
@@ -33,7 +34,7 @@ def main() -> None:
         tuned = fitted(learn, reach)
         report(scene, idf1(test, Settings(), reach), idf1(test, tuned, reach))
     if asked.real:
-        real(asked.real)
+        real(asked.real, asked.pattern)
 
 
 def made(scene, seed):
@@ -56,8 +57,7 @@ def scores(pairs, settings, reach):
 
     scope = Scope(distance_threshold=reach) if reach else Scope()
     return [
-        evaluate(track_log(log, settings), truth, scope, with_referee=False)
-        for log, truth in pairs
+        evaluate(track_log(log, settings), truth, scope, with_referee=False) for log, truth in pairs
     ]
 
 
@@ -69,10 +69,10 @@ def report(name, before, after):
     print(f"{name:12} {before:8.4f} {after:10.4f}", flush=True)
 
 
-def real(folder):
+def real(folder, pattern):
     sequences = {
         place.name: [(read_log(p), read_truth(place / "truth.txt"))
-                     for p in sorted(place.glob("detections_*.txt"))]
+                     for p in sorted(place.glob(pattern))]
         for place in sorted(folder.iterdir()) if place.is_dir()
     }  # fmt: skip
     before, after = [], []

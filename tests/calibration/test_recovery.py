@@ -14,6 +14,7 @@ from tracker.log.model import Kind
 from tracker.settings import load_settings
 
 REACH = 3.0  # ten sigmas
+BOXES = {"sigma": 0.05, "frames": 60, "size_noise": 0.02, "speed": 1.0}
 
 
 @pytest.fixture(scope="module")
@@ -23,7 +24,11 @@ def points():
 
 @pytest.fixture(scope="module")
 def boxes():
-    return calibrate(*world(Kind.BOX, sigma=0.05, frames=60, objects=60, size_noise=0.02, speed=1.0, clutter=15.0))
+    return calibrate(
+        *world(
+            Kind.BOX, sigma=0.05, frames=60, objects=60, size_noise=0.02, speed=1.0, clutter=15.0
+        )
+    )
 
 
 def measured(found, name):
@@ -64,7 +69,9 @@ def test_matched_filter_is_consistent(points):
 
 
 def test_without_truth_noise_is_still_found():
-    log, _ = world(Kind.BOX, sigma=0.05, frames=60, objects=30, size_noise=0.02, speed=1.0, clutter=1.0)
+    log, _ = world(
+        Kind.BOX, sigma=0.05, frames=60, objects=30, size_noise=0.02, speed=1.0, clutter=1.0
+    )
     found = calibrate(log)
     # Tracks of the engine, not of the truth, hence wider: a few contain clutter.
     assert found.settings.measurement.position_sigma == pytest.approx(0.05, rel=0.2)
@@ -90,7 +97,7 @@ def test_few_observations_keep_the_defaults():
 def test_wrong_input_is_told():
     log, truth = world(frames=3)
     _, boxes = world(Kind.BOX, frames=3)
-    with pytest.raises(UsageError, match="point detections and its truth boxs?"):
+    with pytest.raises(UsageError, match="has point detections, its truth is of kind box"):
         calibrate(log, boxes)
     with pytest.raises(UsageError, match="distance-threshold"):
         calibrate(log, truth)

@@ -25,7 +25,7 @@ class Calibration:
 
     shares : P_D and the share of true detections, in bins.   consistency : NIS of the last third
     of the frames, with noise fitted to the first two thirds.   matched : one a log, none without
-    truth.   distances : d² of all innovations under `settings`.
+    truth.   distances : d² of all innovations under `settings`.   dimension : of one measurement.
     """
 
     source: str
@@ -89,7 +89,8 @@ def calibrate(
     evidence += [*later, seen.clutter_rate(found), *noise.measurement_error(found)]
     return Calibration(
         f"Calibrated from {_names(logs)} and truth",
-        tuned, tuple(evidence), tuple(seen.detection_shares(found)), held_out, tuple(found), logs[0].kind.dimension,
+        tuned, tuple(evidence), tuple(seen.detection_shares(found)), held_out, tuple(found),
+        logs[0].kind.dimension,
         noise.distances(chains, tuned),
     )  # fmt: skip
 

@@ -4,7 +4,8 @@ Detections err with heavy tails: boxes of half-hidden objects are cut short, err
 to frame, annotations jump. The likeliest normal noise is then that of the many small errors, and
 the gate and the likelihood cost refuse the few large ones, each a lost identity. `gate.probability`
 is the chance that the true detection is inside; where significantly fewer are, measurement noise
-is widened until it is true.
+is widened until it is true. Wider measurement noise leaves less to process noise, which is fitted
+again; both in turn until the gate holds.
 """
 
 from __future__ import annotations
@@ -24,12 +25,27 @@ from tracker.settings import Settings
 
 MOST = 8.0
 STEPS = 9  # halvings: the factor to 0.5%
+ROUNDS = 3
 
 
 def hold_gate(
     chains: Sequence[Chains], settings: Settings, evidence: list[Evidence]
 ) -> tuple[Settings, list[Evidence]]:
     """Settings with wider measurement noise where it is needed, and what that rests on."""
+    for _ in range(ROUNDS):
+        wider, said = _widen(chains, settings, evidence)
+        if wider is settings:
+            break
+        settings, again = noise.fit_noise(chains, wider, keep_sigmas=True)
+        fitted = {item.setting: item for item in again}
+        evidence = [fitted.get(item.setting, item) for item in said]
+    return settings, evidence
+
+
+def _widen(
+    chains: Sequence[Chains], settings: Settings, evidence: list[Evidence]
+) -> tuple[Settings, list[Evidence]]:
+    """One round; the same settings if the gate holds."""
     inside = settings.gate.probability
     if inside is None or all(item.log.sigma is not None for item in chains):
         return settings, evidence
@@ -61,8 +77,8 @@ def hold_gate(
     factor = math.exp(high)
     wide = widened(factor)
     said = (
-        f"widened {factor:.2f} times from the likeliest: {at_first:.2%} of the true detections "
-        f"were outside the {inside:.1%} gate"
+        f"likeliest noise widened, at last {factor:.2f} times: {at_first:.2%} of the true "
+        f"detections were outside the {inside:.1%} gate"
     )
     return wide, [
         Evidence(e.setting, noise.value_of(wide, e.setting), e.count, said, None)

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from scipy.spatial import ConvexHull, QhullError
@@ -153,7 +154,7 @@ def _binned(name: str, values: Floats, real: np.ndarray) -> list[Share]:
     edges = np.unique(np.quantile(values, np.linspace(0.0, 1.0, BINS + 1)))
     edges = np.append(edges[:-1], np.nextafter(edges[-1], np.inf))
     out = []
-    for low, high in zip(edges[:-1], edges[1:], strict=True):
+    for low, high in pairwise(edges):
         inside = (values >= low) & (values < high)
         if inside.any():
             out.append(

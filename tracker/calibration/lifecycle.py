@@ -93,9 +93,7 @@ def _chance(hits: int, window: int, probability: float) -> float:
     return float(binom.sf(hits - 2, window - 1, probability))
 
 
-def _gate_volume(
-    chains: Sequence[Chains], settings: Settings, found: Sequence[Matched]
-) -> float:
+def _gate_volume(chains: Sequence[Chains], settings: Settings, found: Sequence[Matched]) -> float:
     """Median volume in which a detection is better explained by a track than as new."""
     from tracker.association.rule import gate_threshold
 

@@ -56,7 +56,9 @@ def match(log: DetectionLog, truth: Truth, distance_threshold: float | None = No
     matches.
     """
     if log.kind is not truth.kind:
-        raise UsageError(f"'{log.name}' has {log.kind} detections and its truth {truth.kind}s")
+        raise UsageError(
+            f"'{log.name}' has {log.kind} detections, its truth is of kind {truth.kind}"
+        )
     if log.kind is Kind.POINT and distance_threshold is None:
         raise UsageError("points need --distance-threshold, in the log's length unit")
     frame = np.repeat(log.frame_numbers, np.diff(log.offsets))

@@ -9,7 +9,7 @@ annotation errors play no part, and gaps are predicted across as the engine does
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import msgspec
@@ -67,9 +67,7 @@ class Chains:
 
 def chains_of(item: Matched, settings: Settings) -> Chains:
     """Chains of matched detections, and the camera's motion as the engine follows it."""
-    return link(
-        item.log, item.position, item.truth.object[item.thing], item.detection, settings
-    )
+    return link(item.log, item.position, item.truth.object[item.thing], item.detection, settings)
 
 
 def link(
@@ -183,11 +181,18 @@ def loss(chains: Sequence[Chains], settings: Settings, axes: slice) -> float:
     return total
 
 
-def fit_noise(chains: Sequence[Chains], settings: Settings) -> tuple[Settings, list[Evidence]]:
-    """Settings with the likeliest noise, and the evidence; few innovations leave them alone."""
+def fit_noise(
+    chains: Sequence[Chains], settings: Settings, *, keep_sigmas: bool = False
+) -> tuple[Settings, list[Evidence]]:
+    """Settings with the likeliest noise, and the evidence; few innovations leave them alone.
+
+    keep_sigmas : leave the measurement noise as it is, as where the log has its own.
+    """
     boxes = chains[0].log.kind is Kind.BOX
-    given = all(item.log.sigma is not None for item in chains)
-    groups = [(POSITION, slice(0, 2))] + ([(SIZE, slice(2, 4))] if boxes else [])
+    given = keep_sigmas or all(item.log.sigma is not None for item in chains)
+    groups: list[tuple[tuple[str, ...], slice]] = [(POSITION, slice(0, 2))] + (
+        [(SIZE, slice(2, 4))] if boxes else []
+    )
     evidence: list[Evidence] = []
     for names, axes in groups:
         if given:
@@ -306,7 +311,7 @@ def value_of(settings: Settings, path: str) -> float:
     return getattr(getattr(settings, section), name)
 
 
-def set_values(settings: Settings, values: dict[str, object]) -> Settings:
+def set_values(settings: Settings, values: Mapping[str, object]) -> Settings:
     """Settings with some values replaced, checked."""
     plain = settings_as_dict(settings)
     for path, value in values.items():

@@ -108,4 +108,3 @@ def widened(evidence: Sequence[Evidence], factor: float) -> list[Evidence]:
             interval,
         ))  # fmt: skip
     return out
-

@@ -82,4 +82,4 @@ def table(found: Calibration) -> str:
         cells = [row[0].ljust(widths[0])]
         cells += [row[k].rjust(widths[k]) for k in range(1, 4)]
         lines.append("  ".join([*cells, row[4]]).rstrip())
-    return "\n".join(lines + ["", *consistency_lines(found)])
+    return "\n".join([*lines, "", *consistency_lines(found)])
