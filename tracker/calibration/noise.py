@@ -307,6 +307,7 @@ def distances(chains: Sequence[Chains], settings: Settings) -> Floats:
 
 
 def value_of(settings: Settings, path: str) -> float:
+    """The value of a setting given by its path."""
     section, name = path.split(".")
     return getattr(getattr(settings, section), name)
 
