@@ -27,7 +27,8 @@ class Evidence:
     def sentence(self) -> str:
         """The comment in the settings file."""
         if self.kept:
-            return f"kept the default, only {self.count} observations; {self.method}"
+            few = "only " if self.count < FEWEST else ""
+            return f"kept the default, {few}{self.count} observations; {self.method}"
         text = f"measured: {short(self.value)}"
         if self.interval is not None:
             text += f" (95%: {self.interval[0]:.4g} to {self.interval[1]:.4g})"
