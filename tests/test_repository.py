@@ -24,6 +24,7 @@ ROOT = Path(__file__).resolve().parent.parent
 PROJECT = tomllib.loads((ROOT / "pyproject.toml").read_text(encoding="utf-8"))["project"]
 
 PUBLIC_NAMES = [
+    "Calibration",
     "CandidatePairs",
     "DetectionLog",
     "Engine",
@@ -36,6 +37,7 @@ PUBLIC_NAMES = [
     "Tracks",
     "Truth",
     "associate_log",
+    "calibrate",
     "compare",
     "diagnose",
     "evaluate",

@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from tracker.association import CandidatePairs, k_best, marginals, register_cost
+    from tracker.calibration import Calibration, calibrate
     from tracker.causes import diagnose
     from tracker.comparison import compare
     from tracker.diagnosis import explain
@@ -24,6 +25,7 @@ if TYPE_CHECKING:
 # Where each public name lives. They are imported on first use (PEP 562), so that
 # `margent --help` does not wait for numba.
 _HOME = {
+    "Calibration": "tracker.calibration",
     "CandidatePairs": "tracker.association",
     "DetectionLog": "tracker.log",
     "Engine": "tracker.engine",
@@ -36,6 +38,7 @@ _HOME = {
     "Tracks": "tracker.results",
     "Truth": "tracker.log",
     "associate_log": "tracker.offline",
+    "calibrate": "tracker.calibration",
     "compare": "tracker.comparison",
     "diagnose": "tracker.causes",
     "evaluate": "tracker.evaluation",
@@ -51,6 +54,7 @@ _HOME = {
 }
 
 __all__ = [
+    "Calibration",
     "CandidatePairs",
     "DetectionLog",
     "Engine",
@@ -63,6 +67,7 @@ __all__ = [
     "Tracks",
     "Truth",
     "associate_log",
+    "calibrate",
     "compare",
     "diagnose",
     "evaluate",

@@ -17,6 +17,7 @@ from collections.abc import Sequence
 import typer
 
 from tracker.cli.associate import associate
+from tracker.cli.calibrate import calibrate
 from tracker.cli.compare import compare
 from tracker.cli.evaluate import evaluate
 from tracker.cli.explain import explain
@@ -41,7 +42,7 @@ app = typer.Typer(
     rich_markup_mode=None,
     pretty_exceptions_enable=False,
 )
-for command in (associate, compare, evaluate, explain, inspect, simulate):
+for command in (associate, calibrate, compare, evaluate, explain, inspect, simulate):
     app.command()(command)
 
 
