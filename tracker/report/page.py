@@ -15,7 +15,7 @@ from tracker.log.model import Truth
 from tracker.report.gather import gather
 from tracker.results.folder import atomic_file
 
-SCRIPTS = ("base.js", "stage.js", "verdict.js", "lanes.js", "plots.js", "main.js")
+SCRIPTS = ("base.js", "stage.js", "panels.js", "plots.js", "main.js")
 
 
 def write_page(
