@@ -29,6 +29,7 @@ from tracker.settings import load_settings
 
 LEDGER_DIGITS = 4  # behind the point, as written on the page
 MARGIN_EDGES = (0.0, 0.1, 0.5, 1.0, 2.3, 4.6, 10.0, np.inf)
+SCORES = ("hota", "idf1", "mota", "switches", "misses", "false_positives", "objects")
 LEDGER_COLUMNS = ("cost", "distance", "overlap", "margin", "force_cost")
 
 
@@ -53,7 +54,8 @@ def gather(run: str | Path, truth: Truth | None = None, scope: Scope | None = No
     scores = None
     if truth is not None:
         scope = scope or Scope()
-        scores = evaluate(tracks, truth, scope).as_dict()
+        found = evaluate(tracks, truth, scope).as_dict()
+        scores = {name: found[name] for name in SCORES}
         findings = diagnose(folder, truth, scope).findings
     numbers = [tracks.frame, seen["frame"].to_numpy(), expected["frame"].to_numpy()]
     if truth is not None:
@@ -180,6 +182,7 @@ def _ledger(decisions: pa.Table, shown: Ints) -> dict[str, Any]:
     columns: dict[str, Any] = {
         "frame": at,
         "tier": table["tier"].to_pylist(),
+        "component": table["component"].to_pylist(),
         "track": table["track"].to_pylist(),
         "detection": table["detection"].to_pylist(),
         "decision": table["decision"].to_pylist(),
@@ -188,9 +191,7 @@ def _ledger(decisions: pa.Table, shown: Ints) -> dict[str, Any]:
     }
     for name in LEDGER_COLUMNS:
         rounded = pc.round(table[name], LEDGER_DIGITS).to_pylist()
-        columns[name] = [
-            v if v is None or np.isfinite(v) else "infinite" for v in rounded
-        ]
+        columns[name] = [v if v is None or np.isfinite(v) else "infinite" for v in rounded]
     return columns
 
 
@@ -223,9 +224,7 @@ def _plots(decisions: pa.Table, frames: Ints, seen: pa.Table, kind: Kind) -> dic
     counts, _ = np.histogram(distance, edges)
     expected = np.diff(chi2.cdf(edges, kind.dimension)) * len(distance)
     margins = np.digitize(margin, MARGIN_EDGES[1:-1])
-    _, objects = np.unique(
-        np.concatenate([frames, seen["frame"].to_numpy()]), return_counts=True
-    )
+    _, objects = np.unique(np.concatenate([frames, seen["frame"].to_numpy()]), return_counts=True)
     return {
         "margin_edges": list(MARGIN_EDGES[:-1]),
         "margin": np.bincount(margins, minlength=len(MARGIN_EDGES) - 1).tolist(),

@@ -45,7 +45,8 @@ def page_text(data: list[dict[str, Any]]) -> str:
     style = (folder / "style.css").read_text(encoding="utf-8")
     code = "\n".join((folder / name).read_text(encoding="utf-8") for name in SCRIPTS)
     code = f'"use strict";\n(() => {{\n{code}\n}})();\n'
-    embedded = json.dumps(data, separators=(",", ":"), ensure_ascii=False).replace("<", "\\u003c")
+    embedded = json.dumps(data, separators=(",", ":"), ensure_ascii=False, allow_nan=False)
+    embedded = embedded.replace("<", "\\u003c")
     page = (folder / "page.html").read_text(encoding="utf-8")
     parts = {
         "@POLICY@": f"default-src 'none'; script-src {_digest(code)}; style-src {_digest(style)}",

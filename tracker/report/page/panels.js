@@ -69,8 +69,8 @@ function showDecision() {
   }
   if (view.follow === null) { part.append(make("p", "Click an object to see how its detection was decided.", { class: "note" })); return; }
   const mine = rows.ledger[view.at].filter((k) => l.track[k] === view.follow);
-  const seen = new Set(mine.map((k) => l.detection[k]).filter((d) => d !== null));
-  const rivals = rows.ledger[view.at].filter((k) => l.track[k] !== view.follow && seen.has(l.detection[k]));
+  const near = new Set(mine.map((k) => `${l.tier[k]} ${l.component[k]}`));
+  const rivals = rows.ledger[view.at].filter((k) => l.track[k] !== view.follow && near.has(`${l.tier[k]} ${l.component[k]}`));
   if (!mine.length) { part.append(make("p", "The ledger has no row of this track here.", { class: "note" })); return; }
   const margin = mine.map((k) => l.margin[k]).find((value) => value !== null);
   if (margin !== undefined) {
@@ -84,15 +84,16 @@ function showDecision() {
     grid.append(head);
     for (const k of list) {
       const row = make("tr", "", { class: l.chosen[k] ? "chosen" : "", "data-row": k });
-      const who = l.detection[k] === null ? "miss" : title.startsWith("Rival") ? `track ${l.track[k] ?? "new"} · ${l.detection[k]}` : `detection ${l.detection[k]}`;
+      const what = l.detection[k] === null ? "miss" : `detection ${l.detection[k]}`;
+      const who = list === mine ? what : `${l.track[k] === null ? "new track" : `track ${l.track[k]}`}, ${what}`;
       row.append(make("td", who), make("td", number(l.cost[k], 4)), make("td", number(l.distance[k], 4)), make("td", number(l.overlap[k])), make("td", whyNot(k)));
       grid.append(row);
     }
     box.append(grid); part.append(box);
   };
   table("Candidate", mine);
-  table("Rival for it", rivals);
-  part.append(make("p", "Costs in nats, as the ledger has them. Rivals that the ledger level leaves out are not here.", { class: "note" }));
+  table("Rivals", rivals);
+  part.append(make("p", "Costs in nats, as the ledger has them. Rivals share gated detections with this track. At ledger level 'contested' unchosen candidates are kept only where a margin is small.", { class: "note" }));
 }
 
 function drawn(tag, attributes, text) {
