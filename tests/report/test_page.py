@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import json
+import time
 from pathlib import Path
 
 import pyarrow.parquet as pq
 import pytest
 
 from tests.diagnosis.runs import CROSSING, crossing, made_run
+from tracker.evaluation import Scope
 from tracker.log import read_truth
 from tracker.report.gather import gather
 from tracker.report.page import page_text
@@ -30,7 +32,7 @@ def folder(tmp_path_factory):
 @pytest.fixture(scope="module")
 def data(folder, tmp_path_factory):
     """A run against a truth that changes tracks half-way: one switch at least."""
-    rows = pq.read_table(folder / "tracks.csv".replace("csv", "parquet")).to_pylist()
+    rows = pq.read_table(folder / "tracks.parquet").to_pylist()
     middle = sorted({row["frame"] for row in rows})[len({row["frame"] for row in rows}) // 2]
     first, second = sorted({row["track"] for row in rows})[:2]
     other = {first: second, second: first}
@@ -42,7 +44,7 @@ def data(folder, tmp_path_factory):
         lines.append(",".join([str(row["frame"]), name, *(str(row[c]) for c in columns)]))
     path = tmp_path_factory.mktemp("truth") / "truth.csv"
     path.write_text("\n".join(lines) + "\n", encoding="utf-8")
-    return gather(folder, read_truth(path))
+    return gather(folder, read_truth(path), Scope(distance_threshold=1.0))
 
 
 @pytest.fixture(scope="module")
@@ -111,15 +113,21 @@ def test_plays_and_steps_by_keyboard(visit):
     page.keyboard.press("ArrowLeft")
     assert page.input_value("#scrub") == "1"
     page.keyboard.press(" ")
-    page.wait_for_function("Number(document.getElementById('scrub').value) >= 3")
+    deadline = time.monotonic() + 10.0  # the page's policy forbids playwright's own waiting
+    while int(page.input_value("#scrub")) < 3 and time.monotonic() < deadline:
+        page.wait_for_timeout(30)
+    assert int(page.input_value("#scrub")) >= 3
     page.keyboard.press(" ")
     assert page.inner_text("#play") == "Play"
     page.keyboard.press("e")
     assert page.locator("#decision .why").count() == 1
 
 
-def test_a_click_follows_an_object(visit, data):
+def test_a_click_follows_an_object(visit):
     page = visit()
+    page.keyboard.press("c")
+    page.keyboard.press("Escape")
+    assert page.inner_text("#decision h3") == "Decision"
     page.locator("#stage").scroll_into_view_if_needed()
     box = page.locator("#stage").bounding_box()
     left, right = box["x"], box["x"] + box["width"]

@@ -7,6 +7,7 @@ from typing import Annotated
 
 import typer
 
+from tracker.cli.scoring import DistanceThreshold, IouThreshold, scopes_of
 from tracker.errors import UsageError
 
 
@@ -23,6 +24,8 @@ def report(
             "order, give NAME=FILE, or one folder that holds NAME/truth.* for each.",
         ),
     ] = None,
+    iou_threshold: IouThreshold = 0.5,
+    distance_threshold: DistanceThreshold = None,
     out: Annotated[Path, typer.Option(help="The page to write.")] = Path("report.html"),
 ) -> None:
     """Write one page that shows the scene, its errors with causes, and every decision.
@@ -44,8 +47,19 @@ def report(
         if not is_run(path):
             raise UsageError(f"a report needs run folders, and {path} is a track file")
     truths = truths_by_name(truth, list(sources)) if truth else {}
+    scopes = scopes_of(
+        list(sources),
+        iou_threshold=iou_threshold,
+        distance_threshold=distance_threshold,
+        score_class=None,
+        ignore_class=None,
+        ignore_region=None,
+        visibility_floor=None,
+        frame_stride=None,
+        coasting="as-reported",
+    )
     announce_compiling()
-    size = write_page({name: path for name, (path, _) in sources.items()}, out, truths)
+    size = write_page({name: path for name, (path, _) in sources.items()}, out, truths, scopes)
     typer.echo(f"{out}: {size / 1e6:.1f} MB; open it in a browser", err=True)
     typer.echo(
         "Tracks can be wrong, and tracks of people are personal data: keep the page as the law "

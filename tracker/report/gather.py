@@ -76,9 +76,9 @@ def gather(run: str | Path, truth: Truth | None = None, scope: Scope | None = No
         "left_out": {"frames": int(len(frames) - len(shown)), "of": len(frames)},
         "tracks": _track_columns(tracks, shown, quantum),
         "truth": _truth_columns(truth, shown, quantum),
-        "detections": _places(seen, shown, quantum, tracks.kind) | _scores(seen, shown),
+        "detections": _places(seen, shown, quantum, tracks.kind) | _noise(seen, shown, quantum),
         "gates": _gates(expected, shown, quantum, tracks.kind),
-        "gate_distance": float(chi2.ppf(_gate_probability(folder), tracks.kind.dimension)),
+        "gate_distance": _gate_distance(folder, tracks.kind),
         "ledger": _ledger(decisions, shown),
         "contested": np.intersect1d(contested, shown).tolist(),
         "findings": [_finding(item) for item in findings],
@@ -91,8 +91,10 @@ def gather(run: str | Path, truth: Truth | None = None, scope: Scope | None = No
     }
 
 
-def _gate_probability(folder: Path) -> float:
-    return load_settings(folder / "settings.toml").gate.probability
+def _gate_distance(folder: Path, kind: Kind) -> float | None:
+    """Largest d² inside the gate; None where the d² gate is off."""
+    probability = load_settings(folder / "settings.toml").gate.probability
+    return None if probability is None else float(chi2.ppf(probability, kind.dimension))
 
 
 def _timings(folder: Path) -> Any:
@@ -155,11 +157,12 @@ def _places(table: pa.Table, shown: Ints, quantum: float, kind: Kind) -> dict[st
     }
 
 
-def _scores(seen: pa.Table, shown: Ints) -> dict[str, Any]:
+def _noise(seen: pa.Table, shown: Ints, quantum: float) -> dict[str, Any]:
+    """Variances of the detections' places, for the gate around a prediction."""
     mask, _ = _index(seen["frame"].to_numpy(), shown)
     return {
-        "detection": seen["detection"].to_numpy()[mask].tolist(),
-        "line": seen.filter(pa.array(mask))["line"].to_pylist(),
+        name: _whole(seen[f"variance_{axis}"].to_numpy()[mask], quantum * quantum)
+        for name, axis in (("xx", "x"), ("yy", "y"))
     }
 
 

@@ -55,15 +55,18 @@ function trails(pen, here) {
   pen.globalAlpha = 1;
 }
 
-// The ellipse of the predicted position at the gate's distance.
+// Where the gate lets a detection with the noise of the nearest one lie: S = P + R, d² at P_G.
 function gate(pen) {
   const g = data.gates, k = rows.gates[view.at].find((row) => g.id[row] === view.follow);
-  if (k === undefined) return;
-  const half = (g.xx[k] + g.yy[k]) / 2, root = Math.hypot((g.xx[k] - g.yy[k]) / 2, g.xy[k]);
+  if (k === undefined || data.gate_distance === null) return;
+  const d = data.detections, away = (row) => Math.hypot(d.x[row] - g.x[k], d.y[row] - g.y[k]);
+  const near = rows.detections[view.at].reduce((best, row) => (best < 0 || away(row) < away(best) ? row : best), -1);
+  const xx = g.xx[k] + (near < 0 ? 0 : d.xx[near]), yy = g.yy[k] + (near < 0 ? 0 : d.yy[near]);
+  const half = (xx + yy) / 2, root = Math.hypot((xx - yy) / 2, g.xy[k]);
   const reach = (value) => Math.sqrt(Math.max(value, 0) * data.gate_distance) * camera.scale;
   pen.strokeStyle = ink("--alarm"); pen.setLineDash([6, 3]); pen.beginPath();
   pen.ellipse(toX(g.x[k]), toY(g.y[k]), reach(half + root), reach(half - root),
-    flip() * 0.5 * Math.atan2(2 * g.xy[k], g.xx[k] - g.yy[k]), 0, 7);
+    flip() * 0.5 * Math.atan2(2 * g.xy[k], xx - yy), 0, 7);
   pen.stroke(); pen.setLineDash([]);
 }
 
