@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import json
 import time
 from pathlib import Path
@@ -130,9 +131,9 @@ def test_a_click_follows_an_object(visit):
     assert page.inner_text("#decision h3") == "Decision"
     page.locator("#stage").scroll_into_view_if_needed()
     box = page.locator("#stage").bounding_box()
-    left, right = box["x"], box["x"] + box["width"]
-    for k in range(40):  # somewhere along the middle there is a track
-        page.mouse.click(left + (right - left) * (k + 0.5) / 40, box["y"] + box["height"] / 2)
+    across, down = range(20, int(box["width"]), 55), range(20, int(box["height"]), 55)
+    for x, y in itertools.product(across, down):  # an object within 40 px is followed
+        page.mouse.click(box["x"] + x, box["y"] + y)
         if page.inner_text("#decision h3").startswith("Track"):
             break
     assert page.inner_text("#decision h3").startswith("Track")
