@@ -50,6 +50,7 @@ PUBLIC_NAMES = [
     "read_truth",
     "register_cost",
     "track_log",
+    "write_page",
 ]
 
 KERNEL = '"""Doc."""\n@njit(cache=True)\ndef f():\n    """Doc."""\n'

@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from tracker.evaluation import evaluate
     from tracker.log import DetectionLog, Frame, Kind, Truth, read_log, read_truth
     from tracker.offline import associate_log, track_log
+    from tracker.report import write_page
     from tracker.results import Tracks, TrackState, read_run
     from tracker.settings import Settings, load_settings
 
@@ -51,6 +52,7 @@ _HOME = {
     "read_truth": "tracker.log",
     "register_cost": "tracker.association",
     "track_log": "tracker.offline",
+    "write_page": "tracker.report",
 }
 
 __all__ = [
@@ -80,6 +82,7 @@ __all__ = [
     "read_truth",
     "register_cost",
     "track_log",
+    "write_page",
 ]
 
 

@@ -22,6 +22,7 @@ from tracker.cli.compare import compare
 from tracker.cli.evaluate import evaluate
 from tracker.cli.explain import explain
 from tracker.cli.inspect import inspect
+from tracker.cli.report import report
 from tracker.cli.simulate import simulate
 from tracker.errors import EXIT_DONE, EXIT_INTERNAL, EXIT_USAGE, CertificateError, MargentError
 
@@ -43,6 +44,7 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
 )
 for command in (associate, calibrate, compare, evaluate, explain, inspect, simulate):
+for command in (associate, compare, evaluate, explain, inspect, report, simulate):
     app.command()(command)
 
 
