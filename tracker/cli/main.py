@@ -43,8 +43,7 @@ app = typer.Typer(
     rich_markup_mode=None,
     pretty_exceptions_enable=False,
 )
-for command in (associate, calibrate, compare, evaluate, explain, inspect, simulate):
-for command in (associate, compare, evaluate, explain, inspect, report, simulate):
+for command in (associate, calibrate, compare, evaluate, explain, inspect, report, simulate):
     app.command()(command)
 
 
